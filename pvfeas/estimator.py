@@ -1,0 +1,96 @@
+"""One scenario on one sample: every distribution that an answer needs.
+
+Distribution functions are returned per replicate, shape (values, replicates), so that every
+number comes with its error.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from pvfeas.conditional import Interval, Pivot
+from pvfeas.decision import Rule, needed_signal, signal_intervals
+from pvfeas.laws import Array
+from pvfeas.points import Sample
+from pvfeas.realisation import Realisation
+
+Select = Callable[[Array], Array]
+
+
+@dataclass(frozen=True)
+class Estimator:
+    """Probabilities of one scenario, the pivot integrated at every point.
+
+    realisation holds the scenario at the points of sample, along the pivot's nodes where it
+    has them; extra counts that node axis. noise are standard normal scores of the
+    measurement's own noise.
+    """
+
+    rule: Rule
+    sample: Sample
+    realisation: Realisation
+    pivot: Pivot
+    noise: Array
+    extra: int = 0
+
+    def _times(self, values: Array) -> Array:
+        """Values as the leading axis of everything else."""
+        behind = self.extra + len(self.sample.groups) + 2
+        return np.asarray(values, dtype=float).reshape((-1,) + (1,) * behind)
+
+    def needed(self, wall: Array) -> Array:
+        """The smallest signal that meets the goal by wall time; infinite before the first usable time."""
+        real = self.realisation
+        sigma = np.sqrt(real.averaging.best_variance(wall))
+        needed = needed_signal(self.rule, sigma, sigma, real.relative_variance(wall))
+        return np.asarray(np.where(real.averaging.usable(wall), needed, np.inf))
+
+    def _beyond(self, least: Array) -> list[Interval]:
+        """Intervals of the signed signal in which the goal's kind of signal is at least `least`."""
+        return beyond(self.rule, least)
+
+    def met_by(self, wall: Array, select: Select | None = None) -> Array:
+        """P(required wall time <= wall)."""
+        points = self.pivot.probability(self._beyond(self.needed(self._times(wall))))
+        return (select or self.sample.average)(points)
+
+    def met_by_live(self, live: Array) -> Array:
+        """P(required live time <= live)."""
+        wall = self._times(live) / self.realisation.averaging.live_per_wall
+        return self._average(self._beyond(self.needed(wall)))
+
+    def chance_by(self, wall: Array, select: Select | None = None) -> Array:
+        """Chance that the goal is met by wall time; select averages in another way than over everything."""
+        return (select or self.sample.average)(self.chance_points(wall))
+
+    def chance_points(self, wall: Array) -> Array:
+        """Chance at every point, before averaging."""
+        real, at = self.realisation, self._times(wall)
+        sigma = np.sqrt(real.averaging.best_variance(at))
+        intervals = signal_intervals(self.rule, sigma, sigma, real.relative_variance(at), self.noise)
+        usable = real.averaging.usable(at)
+        return np.asarray(self.pivot.probability(_only(intervals, usable)))
+
+    def ratio_above(self, divisor: Array, value: Array) -> Array:
+        """P(|signal| / divisor > value), divisor at every point."""
+        least = self._times(value) * divisor
+        return self._average([(least, np.array(np.inf)), (np.array(-np.inf), -least)])
+
+    def _average(self, intervals: list[Interval]) -> Array:
+        return self.sample.average(self.pivot.probability(intervals))
+
+
+def beyond(rule: Rule, least: Array) -> list[Interval]:
+    """Where a signed signal counts as at least `least`: both signs, or the predicted one only."""
+    infinite = np.array(np.inf)
+    if not rule.one_signed:
+        return [(least, infinite), (-infinite, -least)]
+    return [(least, infinite)] if rule.predicted_sign > 0 else [(-infinite, -least)]
+
+
+def _only(intervals: tuple[Interval, ...] | list[Interval], usable: Array) -> list[Interval]:
+    """Empty the intervals where the time cannot be used yet."""
+    return [(np.where(usable, low, np.inf), np.where(usable, high, np.inf)) for low, high in intervals]

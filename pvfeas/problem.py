@@ -1,0 +1,135 @@
+"""A study as numbers only: what the text half makes and the number half uses.
+
+No text but names, no units, picklable. A number of a scenario is an Expression of the
+study's inputs; a part of a scenario (technique, line, …) is a Template that becomes an
+instance of its class when the inputs are drawn.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field
+from typing import Any, Generic, TypeVar
+
+import numpy as np
+
+from pvfeas.laws import Array, Law
+from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
+from pvfeas.techniques.base import Technique
+
+T = TypeVar("T")
+Draws = Mapping[str, Array]
+
+
+@dataclass(frozen=True)
+class Ensemble:
+    """Rival calculations of one quantity: one law each, enumerated, never sampled.
+
+    Ensembles of the same group are tied by member name.
+    """
+
+    members: tuple[str, ...]
+    laws: tuple[Law, ...]
+    weights: tuple[float, ...]  # normalised
+    group: str  # the input's own address where none was given
+
+
+@dataclass(frozen=True)
+class Input:
+    """A quantity where it was written: one law or an ensemble, one draw per draw of the study."""
+
+    address: str
+    law: Law | Ensemble
+
+
+@dataclass(frozen=True)
+class Correlation:
+    """Correlation rho of the normal scores of two inputs."""
+
+    between: tuple[str, str]
+    rho: float
+
+
+@dataclass(frozen=True)
+class Expression:
+    """constant × Π inputs × Π base^exponent."""
+
+    constant: float = 1.0
+    inputs: tuple[str, ...] = ()
+    powers: tuple[tuple[Expression, Expression], ...] = ()
+
+    def at(self, draws: Draws) -> Array:
+        """The value on the given draws."""
+        value: Array = np.asarray(self.constant)
+        for address in self.inputs:
+            value = value * draws[address]
+        for base, exponent in self.powers:
+            value = value * base.at(draws) ** exponent.at(draws)
+        return value
+
+    def addresses(self) -> Iterator[str]:
+        """Every input that the value depends on, with repetitions."""
+        yield from self.inputs
+        for base, exponent in self.powers:
+            yield from base.addresses()
+            yield from exponent.addresses()
+
+    def times(self, other: Expression) -> Expression:
+        """The product with another expression."""
+        return Expression(
+            self.constant * other.constant, self.inputs + other.inputs, self.powers + other.powers
+        )
+
+
+@dataclass(frozen=True)
+class Template(Generic[T]):
+    """A part of a scenario before its inputs are drawn."""
+
+    part: type[T]
+    quantities: Mapping[str, Expression] = field(default_factory=dict)
+    options: Mapping[str, Any] = field(default_factory=dict)
+
+    def at(self, draws: Draws) -> T:
+        """The part on the given draws."""
+        numbers = {name: expression.at(draws) for name, expression in self.quantities.items()}
+        return self.part(**numbers, **self.options)
+
+    def addresses(self) -> Iterator[str]:
+        """Every input that the part depends on, with repetitions."""
+        for expression in self.quantities.values():
+            yield from expression.addresses()
+
+
+@dataclass(frozen=True)
+class ScenarioProblem:
+    """One way to measure, as numbers.
+
+    splitting is the true signed difference nu(a) - nu(b) in Hz; arm b has templates of its
+    own, equal to those of arm a where nothing was overridden.
+    """
+
+    name: str
+    splitting: Expression
+    line: Template[Line]
+    technique_a: Template[Technique]
+    technique_b: Template[Technique]
+    switching: Template[Switching]
+    samples_a: Template[Samples]
+    samples_b: Template[Samples]
+    schedule: Template[Schedule]
+    systematics: tuple[Template[Systematic], ...]
+    floor_declared: bool
+    schedule_declared: bool
+
+
+@dataclass(frozen=True)
+class Problem:
+    """A whole study as numbers: the goal, the distinct inputs sorted by address, the scenarios."""
+
+    title: str
+    sha256: str
+    goal: Goal
+    inputs: tuple[Input, ...]
+    correlations: tuple[Correlation, ...]
+    scenarios: tuple[ScenarioProblem, ...]
+    warnings: tuple[tuple[str, str, str], ...] = ()  # code, address, message: found while reading

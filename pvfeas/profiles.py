@@ -1,0 +1,64 @@
+"""Line profiles of unit peak against x, the distance from the centre in full widths at half maximum.
+
+Each has its slope dg/dx and its Hilbert partner (dispersion), which is what an admixed
+asymmetry looks like.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from scipy import special
+
+from pvfeas.laws import Array
+
+LN2 = float(np.log(2.0))
+ROOT_LN2 = float(np.sqrt(LN2))
+
+
+def lorentzian(x: Array) -> Array:
+    """g = 1/(1 + 4 x^2)."""
+    return np.asarray(1.0 / (1.0 + 4.0 * x * x))
+
+
+def lorentzian_slope(x: Array) -> Array:
+    """dg/dx = -8 x/(1 + 4 x^2)^2."""
+    return np.asarray(-8.0 * x / (1.0 + 4.0 * x * x) ** 2)
+
+
+def lorentzian_partner(x: Array) -> Array:
+    """Dispersion 2 x/(1 + 4 x^2), the Hilbert partner of g."""
+    return np.asarray(2.0 * x / (1.0 + 4.0 * x * x))
+
+
+def gaussian(x: Array) -> Array:
+    """g = exp(-4 ln2 x^2)."""
+    return np.asarray(np.exp(-4.0 * LN2 * x * x))
+
+
+def gaussian_slope(x: Array) -> Array:
+    """dg/dx = -8 ln2 x g."""
+    return np.asarray(-8.0 * LN2 * x * np.exp(-4.0 * LN2 * x * x))
+
+
+def gaussian_partner(x: Array) -> Array:
+    """(2/sqrt pi) × Dawson's function of 2 sqrt(ln2) x, the Hilbert partner of g."""
+    return np.asarray(2.0 / np.sqrt(np.pi) * special.dawsn(2.0 * ROOT_LN2 * x))
+
+
+@dataclass(frozen=True)
+class Profile:
+    """A profile with what a fit needs of it."""
+
+    name: str
+    value: Callable[[Array], Array]
+    slope: Callable[[Array], Array]
+    partner: Callable[[Array], Array]
+
+
+PROFILES: dict[str, Profile] = {
+    "lorentzian": Profile("lorentzian", lorentzian, lorentzian_slope, lorentzian_partner),
+    "gaussian": Profile("gaussian", gaussian, gaussian_slope, gaussian_partner),
+}
