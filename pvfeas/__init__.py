@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from pvfeas.compiler import problem_of
     from pvfeas.errors import Fault, PvfeasError, QuantityError, StudyError, UsageError
-    from pvfeas.inheritance import resolve
+    from pvfeas.resolving import resolve
     from pvfeas.options import Options
     from pvfeas.questions.assess import assess
     from pvfeas.questions.compare import compare
@@ -37,7 +37,7 @@ _HOMES = {
     "curves": "questions.curves",
     "load_study": "studyfile",
     "problem_of": "compiler",
-    "resolve": "inheritance",
+    "resolve": "resolving",
 }
 
 __all__ = [

@@ -52,11 +52,12 @@ class Correlation:
 
 @dataclass(frozen=True)
 class Expression:
-    """constant × Π inputs × Π base^exponent."""
+    """constant × Π inputs × Π base^exponent, kept inside limits where a product may leave its bounds."""
 
     constant: float = 1.0
     inputs: tuple[str, ...] = ()
     powers: tuple[tuple[Expression, Expression], ...] = ()
+    limits: tuple[float, float] | None = None
 
     def at(self, draws: Draws) -> Array:
         """The value on the given draws."""
@@ -65,7 +66,7 @@ class Expression:
             value = value * draws[address]
         for base, exponent in self.powers:
             value = value * base.at(draws) ** exponent.at(draws)
-        return value
+        return value if self.limits is None else np.clip(value, *self.limits)
 
     def addresses(self) -> Iterator[str]:
         """Every input that the value depends on, with repetitions."""

@@ -76,6 +76,9 @@ NAMES = {
 }  # fmt: skip
 
 
+NO_UNIT = "there is no unit"
+
+
 def wanted(canonical: str) -> str:
     """What would be right, in words."""
     name = NAMES.get(canonical, f"a quantity in {canonical}")
@@ -106,7 +109,7 @@ def unit_factor(unit: str, canonical: str) -> float:
 def _found(symbol: str, canonical: str) -> str:
     known = any(symbol in table for table in TABLES.values())
     if symbol == "":
-        return "there is no unit"
+        return NO_UNIT
     return f"{symbol!r} is {_owner(symbol)}" if known else f"{symbol!r} is no unit that is known here"
 
 

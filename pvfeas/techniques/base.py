@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from pvfeas.keys import quantity
 from pvfeas.laws import Array
@@ -26,6 +27,14 @@ class Technique:
     excess_noise: Array = quantity(
         "1", "amplitude of the noise over the ideal one", lower=1.0, default="1", example="1.2"
     )
+
+    @classmethod
+    def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
+        """What is wrong with the keys taken together: (key, what was found, what would be right).
+
+        given: every key of the table that was written, options with their value.
+        """
+        yield from ()
 
     @property
     def states_splitting(self) -> bool:

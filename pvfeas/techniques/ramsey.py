@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 import numpy as np
 
@@ -58,6 +59,14 @@ class Ramsey(Technique):
     readout: str = choice("what is counted", "both states", "one state", default="both states")
     readout_noise: Array = quantity("1", "rms noise of the counted excited molecules", lower=0.0, default="0")
     idle_time: Array = quantity("s", "part of the cycle without interrogation", lower=0.0, default="0 s", example="50 ms")
+
+    @classmethod
+    def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
+        """Exactly one of molecules and rate."""
+        if "molecules" in given and "rate" in given:
+            yield "rate", "both molecules and rate", "give one of them"
+        if "molecules" not in given and "rate" not in given:
+            yield "molecules", "neither molecules nor rate", "give the molecules per cycle, or their rate in 1/s"
 
     def cycle_time(self, line: Line) -> Array:
         """free_time + idle_time, s."""

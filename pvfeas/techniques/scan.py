@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 import numpy as np
 
@@ -51,6 +52,22 @@ class Scan(Technique):
     counts: Array | None = positive("1", "counts of the line alone in one point at its peak (shot noise)")
     background: Array = quantity("1", "flat background per point as a fraction of counts", lower=0.0, default="0")
     detection: str = choice("what is recorded", "direct", default="direct")
+
+    @classmethod
+    def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
+        """snr belongs to white noise, counts and background to shot noise."""
+        if given.get("noise", "white") == "shot":
+            if "counts" not in given:
+                yield "counts", "shot noise without counts", "give the counts of the line in one point at its peak"
+            for key in ("snr", "snr_time"):
+                if key in given:
+                    yield key, f"{key} with shot noise", 'counts say it all: drop it, or write noise = "white"'
+            return
+        if "snr" not in given:
+            yield "snr", "white noise without snr", "give the peak over the rms noise of one point"
+        for key in ("counts", "background"):
+            if key in given:
+                yield key, f"{key} with white noise", 'write noise = "shot", or drop it'
 
     def cycle_time(self, line: Line) -> Array:
         """Duration of one scan, s."""

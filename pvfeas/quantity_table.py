@@ -1,0 +1,213 @@
+"""A quantity written as a table: value with source and status, percentiles, products, scales, ensembles, differences."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import mpmath
+import numpy as np
+from scipy import special
+
+from pvfeas.errors import QuantityError
+from pvfeas.laws import Exact, Law, Lognormal, Normal
+from pvfeas.quantity import SINGLE, Canonical, Quantity, Scale, parse
+from pvfeas.suggestions import did_you_mean
+from pvfeas.units import TABLES, tidy
+
+STATUSES = ("measured", "demonstrated", "extrapolated", "assumed")
+PERCENTILES = {"p025": 0.025, "p05": 0.05, "p10": 0.10, "p16": 0.16, "p84": 0.84, "p90": 0.90, "p95": 0.95, "p975": 0.975}
+PAIRS = (("p05", "p95"), ("p16", "p84"), ("p10", "p90"), ("p025", "p975"))
+TEXTS = ("source", "note", "status", "group")
+KEYS = (
+    "value", "unit", "source", "note", "status", "demonstrated", "law", "times", "scale", "values", "weights", "group",
+    "discrepancy", "relative", "difference", *PERCENTILES,
+)  # fmt: skip
+MOST_MEMBERS = 100
+
+
+def inside(key: str, error: QuantityError) -> QuantityError:
+    """The same error, said to be about one key of the table."""
+    return QuantityError(f"{key}: {error.found}", error.wanted)
+
+
+def parse_table(table: dict[str, Any], canonical: Canonical, splitting: bool = False) -> Quantity:
+    """Read the table form. QuantityError names the key that is wrong."""
+    allowed = (*KEYS, "of") if splitting else KEYS
+    for key in table:
+        if key not in allowed:
+            raise QuantityError(f"the key {key!r}", did_you_mean(key, allowed) or f"known keys are {', '.join(allowed)}")
+    _texts(table)
+    relative = _flag(table)
+    inner = Canonical("*") if "times" in table else Canonical("1") if relative else canonical
+    starts = [k for k in ("value", "values", "difference") if k in table] + [k for k in table if k in PERCENTILES][:1]
+    if len(starts) != 1:
+        found = "no value" if not starts else f"both {starts[0]} and {starts[1]}"
+        raise QuantityError(found, "exactly one of value, values, difference or a pair such as p05 and p95 is needed")
+    base = _base(table, inner, starts[0])
+    times = tuple(_list(table, "times", lambda one: parse(one, "*")))
+    scale = tuple(_list(table, "scale", _scale))
+    return Quantity(
+        written=table, law=base.law, reference=base.reference, along_line=base.along_line, relative=relative,
+        times=base.times + times, scale=base.scale + scale, members=base.members, weights=base.weights,
+        group=table.get("group", ""), discrepancy=_one(table, "discrepancy", "1"),
+        source=table.get("source", ""), note=table.get("note", ""), status=table.get("status", ""),
+        demonstrated=_demonstrated(table, inner), extra=(("of", table["of"]),) if "of" in table else (),
+        dimension=base.dimension,
+    )  # fmt: skip
+
+
+def _texts(table: dict[str, Any]) -> None:
+    for key in TEXTS:
+        if key in table and not isinstance(table[key], str):
+            raise QuantityError(f"{key}: {table[key]!r}", "a text in quotes is needed")
+    status = table.get("status")
+    if status is not None and status not in STATUSES:
+        raise QuantityError(f"status: {status!r}", did_you_mean(status, STATUSES) or f"one of {', '.join(STATUSES)}")
+    if "group" in table and "values" not in table:
+        raise QuantityError("group without values", "group ties ensembles: give values = {…}")
+    for key, partner in (("weights", "values"), ("discrepancy", "values"), ("law", None), ("unit", None)):
+        if key in table and partner and partner not in table:
+            raise QuantityError(f"{key} without {partner}", f"{key} belongs to {partner}")
+
+
+def _flag(table: dict[str, Any]) -> bool:
+    relative = table.get("relative", False)
+    if not isinstance(relative, bool):
+        raise QuantityError(f"relative: {relative!r}", "true or false is needed")
+    return relative
+
+
+def _base(table: dict[str, Any], canonical: Canonical, start: str) -> Quantity:
+    if start == "values":
+        return _ensemble(table, canonical)
+    if start == "difference":
+        return _difference(table, canonical)
+    if start in PERCENTILES:
+        return _percentiles(table, canonical)
+    return _value(table["value"], table, canonical, "value")
+
+
+def _value(written: Any, table: dict[str, Any], canonical: Canonical, key: str) -> Quantity:
+    """A text or number, with the table's unit behind it where it has one."""
+    unit = table.get("unit")
+    if unit is not None and not isinstance(unit, str):
+        raise QuantityError(f"unit: {unit!r}", "a text in quotes is needed")
+    if isinstance(written, dict):
+        raise QuantityError(f"{key}: a table", "a text or a number is needed")
+    if unit is not None:
+        written = f"{written} {unit}"
+    try:
+        return parse(written, canonical.unit, canonical.along_line)
+    except QuantityError as error:
+        raise inside(key, error) from None
+
+
+def _one(table: dict[str, Any], key: str, unit: str) -> Quantity | None:
+    if key not in table:
+        return None
+    try:
+        return parse(table[key], unit)
+    except QuantityError as error:
+        raise inside(key, error) from None
+
+
+def _demonstrated(table: dict[str, Any], canonical: Canonical) -> Quantity | None:
+    if "demonstrated" not in table:
+        return None
+    return _value(table["demonstrated"], table, canonical, "demonstrated")
+
+
+def _list(table: dict[str, Any], key: str, read: Any) -> list[Any]:
+    entries = table.get(key, [])
+    if not isinstance(entries, list):
+        raise QuantityError(f"{key}: {entries!r}", f"a list is needed: {key} = [ … ]")
+    found = []
+    for place, entry in enumerate(entries):
+        try:
+            found.append(read(entry))
+        except QuantityError as error:
+            raise inside(f"{key}[{place}]", error) from None
+    return found
+
+
+def _scale(entry: Any) -> Scale:
+    if not isinstance(entry, dict) or set(entry) != {"with", "from", "exponent"}:
+        raise QuantityError(f"{entry!r}", 'a table {with = "@…", from = "…", exponent = "…"} is needed')
+    return Scale(parse(entry["with"], "*"), parse(entry["from"], "*"), parse(entry["exponent"], "1"))
+
+
+def _percentiles(table: dict[str, Any], canonical: Canonical) -> Quantity:
+    """A pair of percentiles of equal tails: lognormal where both are positive, unless law says normal."""
+    given = {key for key in table if key in PERCENTILES}
+    pair = next((pair for pair in PAIRS if set(pair) == given), None)
+    if pair is None:
+        raise QuantityError(f"the percentiles {', '.join(sorted(given))}", "a pair is needed: p05 and p95, p16 and p84, …")
+    ends = []
+    for key in pair:
+        law = _value(table[key], table, canonical, key).law
+        if not isinstance(law, Exact):
+            raise QuantityError(f"{key}: {table[key]!r}", "an exact value is needed in a pair of percentiles")
+        ends.append(law.value)
+    name = table.get("law", "lognormal" if ends[0] > 0 else "normal")
+    if name not in ("normal", "lognormal"):
+        raise QuantityError(f"law: {name!r}", "normal or lognormal is needed")
+    if ends[0] >= ends[1]:
+        raise QuantityError(f"{pair[0]} is not below {pair[1]}", "the percentiles must rise")
+    return Quantity(table, law=_between(name, ends, float(special.ndtri(PERCENTILES[pair[1]]))))
+
+
+def _between(name: str, ends: list[float], z: float) -> Law:
+    low, high = ends
+    if name == "normal":
+        return Normal((low + high) / 2.0, (high - low) / (2.0 * z))
+    if low <= 0.0:
+        raise QuantityError("a percentile that is not positive", 'a lognormal law is positive: write law = "normal"')
+    return Lognormal(float(np.sqrt(low * high)), float((high / low) ** (1.0 / (2.0 * z))))
+
+
+def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
+    values = table["values"]
+    if not isinstance(values, dict) or not values:
+        raise QuantityError("values without members", 'a table of calculations is needed: values = {HF = "…", B3LYP = "…"}')
+    if len(values) > MOST_MEMBERS:
+        raise QuantityError(f"{len(values)} members", f"at most {MOST_MEMBERS} are enumerated")
+    members = tuple((name, _value(one, table, canonical, f"values.{name}")) for name, one in values.items())
+    for name, member in members:
+        if member.law is None:
+            raise QuantityError(f"values.{name}: a reference", "members are written out")
+    weights = table.get("weights", {})
+    if isinstance(weights, list) and len(weights) == len(members):
+        weights = dict(zip(values, weights, strict=True))
+    if not isinstance(weights, dict) or (weights and set(weights) != set(values)):
+        raise QuantityError("weights that do not match the members", "one weight for each member is needed, by name")
+    numbers = [weights.get(name, 1.0) for name in values]
+    if not all(isinstance(w, int | float) and not isinstance(w, bool) and 0 < w < 1e12 for w in numbers):
+        raise QuantityError("a weight that is not a positive number", "weights are positive; they need not add to 1")
+    total = float(sum(numbers))
+    return Quantity(table, members=members, weights=tuple(float(w) / total for w in numbers))
+
+
+def _difference(table: dict[str, Any], canonical: Canonical) -> Quantity:
+    """Two absolute values subtracted at full precision (mpmath), in the canonical unit."""
+    pair = table["difference"]
+    if not isinstance(pair, list) or len(pair) != 2 or not all(isinstance(one, str) for one in pair):
+        raise QuantityError("difference: not two texts", 'two absolute values are needed: difference = ["… cm^-1", "… cm^-1"]')
+    if canonical.unit not in TABLES:
+        raise QuantityError("difference of a compound unit", "only frequencies and energies are subtracted")
+    return Quantity(table, law=Exact(exact_difference(pair[0], pair[1], canonical.unit)))
+
+
+def exact_difference(first: str, second: str, canonical: str) -> float:
+    """first − second in the canonical unit at 60 digits, rounded once at the end."""
+    with mpmath.workdps(60):
+        return float(_exact(first, canonical) - _exact(second, canonical))
+
+
+def _exact(text: str, canonical: str) -> Any:
+    match = SINGLE.fullmatch(tidy(text))
+    if match is None:
+        raise QuantityError(f'difference: "{text}"', "an exact number with its unit is needed")
+    factor = TABLES[canonical].get(match["unit"])
+    if factor is None:
+        raise QuantityError(f'difference: the unit {match["unit"]!r}', "a frequency or an energy is needed")
+    return mpmath.mpf(match["value"]) * mpmath.mpf(str(factor))
