@@ -283,3 +283,26 @@ class Curves:
     goal: str  # in words: "detect at 5 sigma with 90 % power"
     sigma: tuple[SigmaCurve, ...]
     chance: tuple[ChanceCurve, ...]
+
+
+@dataclass(frozen=True)
+class InputRow:
+    """One input as check shows it."""
+
+    address: str
+    text: str
+    law: str
+    status: str
+    source: str
+
+
+@dataclass(frozen=True)
+class Understood:
+    """What check understood of a study."""
+
+    title: str
+    rows: tuple[InputRow, ...]
+    exact: tuple[str, ...]
+    assumed: tuple[str, ...]
+    without_source: tuple[str, ...]
+    warnings: tuple[Warned, ...]

@@ -1,1 +1,1 @@
-
+"""The commands: load, call, render, write."""

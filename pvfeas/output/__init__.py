@@ -1,1 +1,1 @@
-
+"""Results as text, JSON and CSV, and writing them safely."""

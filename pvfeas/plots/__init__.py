@@ -1,1 +1,1 @@
-
+"""Figures: pure functions from curves to a figure; saving is elsewhere."""

@@ -1,1 +1,1 @@
-
+"""The questions: functions from a problem to a result."""

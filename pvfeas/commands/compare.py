@@ -1,0 +1,56 @@
+"""pvfeas compare: scenarios side by side."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import click
+
+from pvfeas.commands.shared import (
+    Ticker,
+    code_of,
+    draw_figures,
+    emit,
+    format_of,
+    format_options,
+    number_options,
+    options_of,
+    read_study,
+    screen,
+    study_options,
+)
+
+
+@click.command("compare")
+@study_options
+@click.argument("names", nargs=-1, metavar="[NAME]…")
+@format_options
+@number_options
+def command(study: str, settings: tuple[str, ...], names: tuple[str, ...], form: str | None, output: str, **given: Any) -> int:
+    """Scenarios side by side: answers, what was written differently, and the odds that one beats another."""
+    from pvfeas.compiler import problem_of
+    from pvfeas.output.csv import assessment_csv
+    from pvfeas.output.json import comparison_content, to_json
+    from pvfeas.output.table import comparison_text
+    from pvfeas.questions.assess import chosen
+    from pvfeas.questions.compare import compare
+    from pvfeas.understanding import differences
+
+    kind, options, ticker = format_of(form, output), options_of(given), Ticker(given["quiet"])
+    read = read_study(study, settings)
+    problem = problem_of(read)
+    picked = [one.name for one in chosen(problem, names)]
+    result = compare(problem, names, options, differences(read, picked), ticker)
+    ticker.done()
+    texts = {
+        "json": lambda: to_json(comparison_content(result)),
+        "csv": lambda: assessment_csv(result.assessment),
+        "text": lambda: comparison_text(result, *(screen() if output == "-" else (0, False))),
+    }
+    if given["figure"] or given["figure_data"]:
+        from pvfeas.questions.curves import curves
+
+        found = curves(problem, names, options)
+        draw_figures(found, "compare", result.assessment.sha256, options.seed, given["figure"], given["figure_data"])
+    emit(texts[kind](), output)
+    return code_of([one.chance.value for one in result.assessment.scenarios], given["fail_under"])

@@ -1,0 +1,23 @@
+"""pvfeas new: a starter study."""
+
+from __future__ import annotations
+
+import click
+
+from pvfeas.commands.shared import emit, output_option
+from pvfeas.errors import UsageError
+
+
+@click.command("new")
+@click.argument("technique")
+@output_option
+def command(technique: str, output: str) -> int:
+    """Write a commented starter study for a TECHNIQUE: quoted, ramsey or scan."""
+    from pathlib import Path
+
+    from pvfeas.starters import starter
+
+    if output != "-" and Path(output).exists():
+        raise UsageError(f"{output} is there already; nothing was written")
+    emit(starter(technique), output)
+    return 0

@@ -1,0 +1,141 @@
+"""What several commands do alike: options, reading the study, writing the answer, progress."""
+
+from __future__ import annotations
+
+import os
+import shutil
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeVar
+
+import click
+
+from pvfeas.errors import UsageError
+
+if TYPE_CHECKING:
+    from pvfeas.options import Options
+    from pvfeas.results import Curves
+    from pvfeas.study import Study
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+
+def _together(*decorators: Callable[[F], F]) -> Callable[[F], F]:
+    def decorate(function: F) -> F:
+        for decorator in reversed(decorators):
+            function = decorator(function)
+        return function
+
+    return decorate
+
+
+study_options = _together(
+    click.argument("study", metavar="STUDY"),
+    click.option("--set", "settings", multiple=True, metavar="ADDRESS=VALUE", help="Change an input, as in beam.line.fwhm='5 kHz'."),
+)
+output_option = click.option("-o", "--output", default="-", metavar="FILE", help="Write there; the suffix sets the format.")
+format_options = _together(
+    click.option("--json", "form", flag_value="json", help="Write JSON."),
+    click.option("--csv", "form", flag_value="csv", help="Write CSV."),
+    output_option,
+)
+number_options = _together(
+    click.option("--seed", default=1, show_default=True, type=click.IntRange(0), help="Seed of the points."),
+    click.option("--tolerance", default=1.0, show_default=True, type=click.FloatRange(1e-3, 100), help="Scale of the tolerances."),
+    click.option("--method", type=click.Choice(["lattice", "monte-carlo"]), default="lattice", show_default=True, help="How inputs are drawn."),
+    click.option("--maximum-points", default=16384, show_default=True, type=click.IntRange(256, 2**20), help="Most points per replicate."),
+    click.option("--figure", metavar="FILE", help="Draw sigma and chance against time: .pdf, .svg or .png."),
+    click.option("--figure-data", metavar="FILE", help="The numbers of the figure as CSV."),
+    click.option("--fail-under", type=click.FloatRange(0, 1), metavar="CHANCE", help="Exit with 3 if a chance is lower."),
+    click.option("--quiet", is_flag=True, help="No progress, no warnings on stderr."),
+)
+
+
+def read_study(source: str, settings: tuple[str, ...]) -> Study:
+    """The study with --set applied."""
+    from pvfeas.studyfile import load_study
+
+    pairs = []
+    for one in settings:
+        address, sign, value = one.partition("=")
+        if not sign:
+            raise UsageError(f"--set {one}: there is no =; write --set ADDRESS=VALUE")
+        pairs.append((address.strip(), value))
+    if source != "-" and "\n" not in source and not Path(source).exists():
+        raise UsageError(f"{source} does not exist")
+    return load_study(source, pairs)
+
+
+def options_of(given: dict[str, Any]) -> Options:
+    """The options that change numbers."""
+    from pvfeas.options import Options
+
+    return Options(given["seed"], given["tolerance"], given["method"], given["maximum_points"])
+
+
+def format_of(form: str | None, output: str) -> str:
+    """json, csv or text: as asked, or as the suffix says."""
+    suffix = Path(output).suffix.lower() if output != "-" else ""
+    known = {".json": "json", ".csv": "csv", ".txt": "text", "": "text"}
+    if form is None and suffix not in known:
+        raise UsageError(f"{output}: no format goes with {suffix}; use .json, .csv or .txt, or say --json or --csv")
+    return form or known[suffix]
+
+
+def emit(text: str, output: str) -> None:
+    """Write text to the output, in ASCII where standard output can do no better."""
+    from pvfeas.output.table import encodable
+    from pvfeas.output.writing import write_bytes
+
+    encoding = (sys.stdout.encoding or "ascii") if output == "-" else "utf-8"
+    write_bytes(output, encodable(text, encoding).encode(encoding, "replace"))
+
+
+def screen() -> tuple[int, bool]:
+    """Width (0: unlimited) and whether to use colour, of standard output."""
+    terminal = sys.stdout.isatty()
+    width = shutil.get_terminal_size((80, 24)).columns if terminal else 0
+    return width, terminal and not os.environ.get("NO_COLOR")
+
+
+class Ticker:
+    """Progress on stderr, on a terminal only and only when it lasts."""
+
+    def __init__(self, quiet: bool) -> None:
+        self.live = not quiet and sys.stderr.isatty()
+        self.start = time.monotonic()
+        self.shown = False
+
+    def __call__(self, message: str) -> None:
+        if self.live and time.monotonic() - self.start > 1.0:
+            sys.stderr.write(f"\r{message}, {time.monotonic() - self.start:.0f} s ")
+            sys.stderr.flush()
+            self.shown = True
+
+    def done(self) -> None:
+        """Clear the line."""
+        if self.shown:
+            sys.stderr.write("\r\x1b[K")
+            sys.stderr.flush()
+
+
+def draw_figures(curves: Curves, question: str, sha256: str, seed: int, figure: str | None, data: str | None) -> None:
+    """The figure and its numbers, where they were asked for."""
+    from pvfeas.output.csv import curves_csv
+    from pvfeas.output.provenance import provenance
+    from pvfeas.output.writing import write_bytes
+
+    if figure is not None:
+        from pvfeas.plots.saving import figure_bytes
+        from pvfeas.plots.sheet import sheet
+
+        write_bytes(figure, figure_bytes(sheet(curves), figure, provenance(question, curves.title, sha256, seed)))
+    if data is not None:
+        write_bytes(data, curves_csv(curves).encode())
+
+
+def code_of(chances: list[float], fail_under: float | None) -> int:
+    """3 where a chance lies below what was asked."""
+    return 3 if fail_under is not None and min(chances) < fail_under else 0
