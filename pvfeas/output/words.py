@@ -33,4 +33,4 @@ def verdict(one: ScenarioResult) -> str:
     else:
         late = "never" if times.q95 is None else time_text(times.q95)
         said += f" Required time: median {time_text(times.q50)}, 5–95 % {time_text(times.q05)} – {late}."
-    return f"{said} {one.status.capitalize()}: {one.reason}."
+    return f"{said} {one.reason[:1].upper()}{one.reason[1:]}."
