@@ -14,11 +14,11 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from pvfeas.compiler import problem_of
     from pvfeas.errors import Fault, PvfeasError, QuantityError, StudyError, UsageError
-    from pvfeas.resolving import resolve
     from pvfeas.options import Options
     from pvfeas.questions.assess import assess
     from pvfeas.questions.compare import compare
     from pvfeas.questions.curves import curves
+    from pvfeas.resolving import resolve
     from pvfeas.study import Study
     from pvfeas.studyfile import load_study
 

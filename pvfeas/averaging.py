@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -10,12 +10,13 @@ import numpy as np
 
 from pvfeas.laws import Array
 from pvfeas.schedule import live_per_wall, supply_live_time
-from pvfeas.systematics import averaged, resets_per_second, size_in_hertz, welch_satterthwaite
+from pvfeas.systematics import after_of, averaged, group_freedom, resets_per_second, size_in_hertz, welch_satterthwaite
 from pvfeas.tables import Line, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques.base import Technique
 
 GOLDEN = (np.sqrt(5.0) - 1.0) / 2.0
-NARROWINGS = 60  # of the golden section: 0.618^60 = 3e-13 of the range of ln t
+NARROWINGS = 40  # of the golden section: 4e-9 of the range of ln t, below 1e-12 of the variance
+Entry = tuple[Systematic, Array]  # with its size in Hz, or relative to the splitting where it is on the scale
 
 
 def purity(ee_a: Array, ee_b: Array) -> Array:
@@ -55,6 +56,11 @@ def first_live_time(technique_a: Technique, technique_b: Technique, line: Line, 
     return np.asarray(np.maximum(cycle_a / switching.live_fraction, cycle_b / (1.0 - switching.live_fraction)))
 
 
+def part_name(systematic: Systematic) -> str:
+    """The name under which it stands in the budget: its own, or that of its group."""
+    return f"systematics.{systematic.name}" if systematic.group is None else f"systematics.{systematic.group} (group)"
+
+
 @dataclass(frozen=True)
 class Averaging:
     """Variance of the splitting seen, Hz^2, against wall time, s. Arrays broadcast over draws.
@@ -69,36 +75,44 @@ class Averaging:
     first: Array
     last: Array
     statistical: Array
-    entries: tuple[tuple[Systematic, Array], ...]
-    scale_entries: tuple[tuple[Systematic, Array], ...]
+    entries: tuple[Entry, ...]
+    scale_entries: tuple[Entry, ...]
     schedule: Schedule
 
     def usable(self, wall: Array) -> Array:
-        """Whether both arms have been measured by then."""
-        return np.asarray(np.asarray(wall) >= self.first)
+        """Whether both arms have been measured by then, before the sample ended."""
+        return np.asarray(np.minimum(wall, self.last) >= self.first)
 
     def parts(self, wall: Array) -> dict[str, Array]:
-        """Variances by name: statistics, reference, systematics.NAME (or .GROUP, added linearly)."""
+        """Variances by name: statistics, reference, systematics.NAME, "systematics.GROUP (group)" (added linearly)."""
         at = np.minimum(wall, self.last)
-        with np.errstate(divide="ignore"):
-            found = {"statistics": np.asarray(self.statistical / at), "reference": np.zeros((1, 1))}
+        found = {"statistics": _over(self.statistical, at), "reference": np.zeros((1, 1))}
         return found | self._groups(self.entries, at)
 
-    def _groups(self, entries: Sequence[tuple[Systematic, Array]], at: Array) -> dict[str, Array]:
+    def _left(self, entries: Sequence[Entry], at: Array) -> list[Array]:
+        """What is left of each entry, in its own unit."""
+        live = at * self.live_per_wall
+        return [averaged(systematic, size, at, live, self.schedule) for systematic, size in entries]
+
+    def _groups(self, entries: Sequence[Entry], at: Array) -> dict[str, Array]:
         sums: dict[str, Array] = {}
-        for systematic, size in entries:
-            name = f"systematics.{systematic.group or systematic.name}"
-            left = averaged(systematic, size, at, at * self.live_per_wall, self.schedule)
+        for (systematic, _), left in zip(entries, self._left(entries, at), strict=True):
+            name = part_name(systematic)
             sums[name] = sums[name] + left if name in sums else left
         return {name: np.asarray(total**2) for name, total in sums.items()}
 
     def variance(self, wall: Array) -> Array:
         """The whole variance at a wall time."""
         at = np.minimum(wall, self.last)
-        with np.errstate(divide="ignore"):
-            total = self.statistical / at + self._constant
-        for part in self._changing:
-            total = total + part(at)
+        falling, constant, rising = self._coefficients
+        total = _over(falling, at) + constant
+        if rising is not None:
+            with np.errstate(invalid="ignore"):
+                total = total + np.where(rising > 0, rising * at, 0.0)
+        for square, rate in self._resetting:
+            total = total + square / np.maximum(1.0, at * rate)
+        if self._grouped:
+            total = total + sum(self._groups(self._grouped, at).values(), np.zeros((1, 1)))
         return np.asarray(total)
 
     def relative_variance(self, wall: Array) -> Array:
@@ -107,54 +121,58 @@ class Averaging:
         return sum(parts.values(), np.zeros((1, 1)))
 
     @cached_property
-    def _plain_entries(self) -> tuple[list[tuple[Systematic, Array]], list[tuple[Systematic, Array]]]:
-        """Entries that stand alone and never average, and all others."""
-        grouped = {s.group for s, _ in self.entries if s.group}
-        constant = [(s, size) for s, size in self.entries if s.averages == "never" and s.group not in grouped]
-        return constant, [(s, size) for s, size in self.entries if not (s.averages == "never" and s.group not in grouped)]
+    def _grouped(self) -> tuple[Entry, ...]:
+        """Entries that share a group with another one."""
+        names = [part_name(systematic) for systematic, _ in self.entries]
+        return tuple(entry for entry, name in zip(self.entries, names, strict=True) if names.count(name) > 1)
+
+    def _alone(self, averages: str) -> list[Entry]:
+        grouped = {id(systematic) for systematic, _ in self._grouped}
+        return [entry for entry in self.entries if entry[0].averages == averages and id(entry[0]) not in grouped]
 
     @cached_property
-    def _constant(self) -> Array:
-        return sum((size**2 for _, size in self._plain_entries[0]), np.zeros((1, 1)))
+    def _coefficients(self) -> tuple[Array, Array, Array | None]:
+        """Variance × wall time, constant variance, variance over wall time, of what stands alone."""
+        falling, constant = self.statistical, np.zeros((1, 1))
+        for systematic, size in self._alone("as 1/t"):
+            falling = falling + size**2 * after_of(systematic) / self.live_per_wall
+        for _, size in self._alone("never"):
+            constant = constant + size**2
+        rising = [size**2 * self.live_per_wall / after_of(systematic) for systematic, size in self._alone("grows")]
+        return falling, constant, sum(rising, np.zeros((1, 1))) if rising else None
 
     @cached_property
-    def _changing(self) -> list[Callable[[Array], Array]]:
-        """Functions of wall time for the entries that average or belong to a group."""
-        alone = [(s, size) for s, size in self._plain_entries[1] if not s.group]
-        made = [self._one(systematic, size) for systematic, size in alone]
-        together = [(s, size) for s, size in self._plain_entries[1] if s.group]
-        if together:
-            made.append(lambda at: sum(self._groups(together, at).values(), np.zeros((1, 1))))
-        return made
-
-    def _one(self, systematic: Systematic, size: Array) -> Callable[[Array], Array]:
-        square = size**2
-        if systematic.averages == "per reset":
-            rate = resets_per_second(systematic, self.schedule)
-            return lambda at: np.asarray(square / np.maximum(1.0, at * rate))
-        if systematic.averages == "as 1/t":
-            over = square * systematic.after / self.live_per_wall
-            return lambda at: _over(over, at)
-        growth = square * self.live_per_wall / systematic.after
-        return lambda at: np.asarray(growth * at)
+    def _resetting(self) -> list[tuple[Array, Array]]:
+        """Variance and resets per wall time of what is reset and stands alone."""
+        return [(size**2, resets_per_second(one, self.schedule)) for one, size in self._alone("per reset")]
 
     @property
     def _grows(self) -> bool:
         return any(systematic.averages == "grows" for systematic, _ in self.entries)
 
-    def best_variance(self, wall: Array) -> Array:
-        """The smallest variance up to a wall time: a campaign may stop at its best time.
+    def best_time(self, wall: Array) -> Array:
+        """The wall time up to `wall` at which the variance is least: a campaign may stop there.
 
-        Only growing systematics make it differ from variance(wall). Between breakpoints (resets
+        Only growing systematics make it differ from `wall`. Between breakpoints (resets
         beginning to count) the variance is a sum of exponentials of ln t with positive
-        coefficients, hence convex: golden section on each piece.
+        coefficients, hence convex: its least value on each piece in closed form, by golden section
+        where entries are grouped.
         """
+        best = np.asarray(wall, dtype=float)
         if not self._grows:
-            return self.variance(wall)
-        best = self.variance(wall)
+            return best
         for candidate in self._minima:
-            best = np.minimum(best, self.variance(np.minimum(candidate, wall)))
-        return np.asarray(best)
+            earlier = np.minimum(candidate, wall)
+            best = np.where(self.variance(earlier) < self.variance(best), earlier, best)
+        return best
+
+    def best_variance(self, wall: Array) -> Array:
+        """The smallest variance up to a wall time."""
+        return self.variance(self.best_time(wall))
+
+    def floor(self) -> Array:
+        """The variance left when there is no end to the wall time; the sample's end still counts."""
+        return self.best_variance(np.array(np.inf))
 
     @cached_property
     def _minima(self) -> list[Array]:
@@ -163,7 +181,8 @@ class Averaging:
         shape = np.broadcast_shapes(*(np.shape(end) for end in ends), np.shape(self.variance(ends[0])))
         edges = np.sort(np.stack([np.broadcast_to(np.log(end), shape) for end in ends]), axis=0)
         edges = np.clip(edges, np.log(ends[0]), np.log(ends[-1]))
-        return [self._least(edges[i], edges[i + 1]) for i in range(len(ends) - 1)]
+        find = self._least if self._grouped else self._least_alone
+        return [find(edges[i], edges[i + 1]) for i in range(len(ends) - 1)]
 
     @property
     def _breakpoints(self) -> list[Array]:
@@ -173,29 +192,48 @@ class Averaging:
             if systematic.averages == "per reset"
         ]
 
+    def _least_alone(self, low: Array, high: Array) -> Array:
+        """The best time between two values of ln t without groups: A/t + C + B t is least at sqrt(A/B)."""
+        falling, _, rising = self._coefficients
+        middle = np.exp((low + high) / 2.0)
+        for square, rate in self._resetting:
+            falling = falling + np.where(middle * rate > 1.0, square / rate, 0.0)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            best = np.sqrt(falling / np.asarray(rising))
+        best = np.where(np.asarray(rising) > 0, best, np.inf)
+        return np.asarray(np.clip(best, np.exp(low), np.exp(high)))
+
     def _least(self, low: Array, high: Array) -> Array:
+        """The best time between two values of ln t, whatever is grouped, by golden section."""
         left, right = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
         at_left, at_right = self.variance(np.exp(left)), self.variance(np.exp(right))
         for _ in range(NARROWINGS):
             lower = at_left < at_right
             low, high = np.where(lower, low, left), np.where(lower, right, high)
-            left, right = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
-            at_left, at_right = self.variance(np.exp(left)), self.variance(np.exp(right))
+            new = np.where(lower, high - GOLDEN * (high - low), low + GOLDEN * (high - low))
+            at_new = self.variance(np.exp(new))
+            left, right = np.where(lower, new, right), np.where(lower, left, new)
+            at_left, at_right = np.where(lower, at_new, at_right), np.where(lower, at_left, at_new)
         return np.asarray(np.exp((low + high) / 2.0))
 
     def degrees_of_freedom(self, wall: Array) -> Array:
         """Effective degrees of freedom of the variance at a wall time (Welch–Satterthwaite); infinite without dof."""
         at = np.minimum(wall, self.last)
-        sizes = [averaged(s, size, at, at * self.live_per_wall, self.schedule) for s, size in self.entries]
-        with np.errstate(divide="ignore"):
-            variances = [np.asarray(self.statistical / at), *(np.square(size) for size in sizes)]
-        freedoms = [np.array(np.inf), *(np.array(np.inf) if s.dof is None else s.dof for s, _ in self.entries)]
+        members: dict[str, list[tuple[Array, Array]]] = {}
+        for (systematic, _), left in zip(self.entries, self._left(self.entries, at), strict=True):
+            freedom = np.array(np.inf) if systematic.dof is None else systematic.dof
+            members.setdefault(part_name(systematic), []).append((left, freedom))
+        variances, freedoms = [_over(self.statistical, at)], [np.array(np.inf)]
+        for entries in members.values():
+            sizes, known = [size for size, _ in entries], [freedom for _, freedom in entries]
+            variances.append(np.square(sum(sizes, np.zeros(()))))
+            freedoms.append(group_freedom(sizes, known))
         return welch_satterthwaite(variances, freedoms)
 
 
 def _over(coefficient: Array, at: Array) -> Array:
-    with np.errstate(divide="ignore"):
-        return np.asarray(coefficient / at)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(np.where(coefficient > 0, coefficient / at, 0.0))
 
 
 def averaging_of(

@@ -50,7 +50,7 @@ class Bounds:
         return low if np.isinf(self.upper) else f"{low} and {high}"
 
     def _one(self, value: float) -> str:
-        return digits(value, 3).rstrip("0").rstrip(".") if self.unit == "1" or value == 0 else value_text(value, self.unit)
+        return f"{value:g}" if self.unit == "1" or value == 0 else value_text(value, self.unit)
 
     def contain(self, value: float) -> bool:
         """Whether an exact value is allowed."""
@@ -89,6 +89,10 @@ def better(law: Law, bounds: Bounds) -> str:
         return f"a lognormal law fits: median ×/ {max(high / law.median, 1.01):.3g}"
     if np.isfinite(bounds.lower) and np.isfinite(bounds.upper):
         return f"a range fits: {bounds.lower:g} .. {bounds.upper:g}"
+    far = float(law.from_score(2.0 if np.isfinite(bounds.lower) else -2.0))
+    if bounds.lower < far < bounds.upper:
+        ends = (bounds.lower, far) if np.isfinite(bounds.lower) else (far, bounds.upper)
+        return f"a range fits: {ends[0]:.3g} .. {ends[1]:.3g}"
     return "write a smaller spread"
 
 

@@ -23,6 +23,7 @@ from pvfeas.units import wanted
 from pvfeas.vocabulary import HWHM, SPLITTING
 
 MOST_INPUTS, MOST_STRATA = 500, 1024
+LONGEST_CHAIN = 50  # references that lead to references
 Warning_ = tuple[str, str, str]
 
 
@@ -65,6 +66,11 @@ def goal_of(made: Mapping[str, Any]) -> Goal:
     return Goal(**values)
 
 
+def inside(address: str, written: Written) -> str:
+    """The key of a quantity's table that an address leads to."""
+    return address.removeprefix(written.address).lstrip(".")
+
+
 class Compiler:
     """Turns written quantities into expressions of inputs, each input once."""
 
@@ -78,9 +84,10 @@ class Compiler:
         self.products: list[tuple[str, Written, Key, Expression]] = []
         self.warnings: list[Warning_] = []
 
-    def complain(self, written: Written, found: str, right: str) -> None:
-        """A fault at the quantity's own place."""
-        self.faults.add(written.line, written.address, found, right, written.file or None)
+    def complain(self, written: Written, found: str, right: str, key: str = "") -> None:
+        """A fault at the quantity's own place, or at a key inside it."""
+        line = self.faults.line_inside(written.address, key, written.line) if key else written.line
+        self.faults.add(line, f"{written.address}.{key}" if key else written.address, found, right, written.file or None)
 
     # expressions
 
@@ -88,6 +95,9 @@ class Compiler:
         """The written quantity as constant × inputs × powers, without `of` and `relative`."""
         if written.address in self.made:
             return self.made[written.address]
+        if len(way) > LONGEST_CHAIN:
+            self.complain(written, f"a chain of more than {LONGEST_CHAIN} references", "refer to the value itself")
+            return Expression()
         if written.address in way:
             loop = " -> ".join([*way[way.index(written.address) :], written.address])
             self.complain(written, f"a circle of references: {loop}", "one of them must be a value")
@@ -107,17 +117,18 @@ class Compiler:
             here = f"{address}.scale[{place}]"
             over = self.whole(scale.with_, f"{here}.with", written, way)
             under = self.whole(scale.from_, f"{here}.from", written, way)
-            self.same_dimension(scale.with_, scale.from_, written)
+            self.same_dimension(scale.with_, scale.from_, written, f"scale[{place}].from")
             ratio = Expression(powers=((over, Expression(1.0)), (under, Expression(-1.0))))
             made = made.times(Expression(powers=((ratio, self.whole(scale.exponent, f"{here}.exponent", written, way)),)))
         return made
 
-    def same_dimension(self, one: Quantity, other: Quantity, written: Written) -> None:
+    def same_dimension(self, one: Quantity, other: Quantity, written: Written, key: str) -> None:
         first, second = self.places.dimension(one), self.places.dimension(other)
         if first is not None and second is not None and first != second:
             self.complain(
-                written, f"scale: with is {dimension_text(first)}, from is {dimension_text(second)}", "both must be of one dimension"
-            )
+                written, f'"{other.text}" is {dimension_text(second)}, with is {dimension_text(first)}',
+                "both must be of one dimension", key,
+            )  # fmt: skip
 
     def base(self, quantity: Quantity, address: str, written: Written, way: tuple[str, ...]) -> Expression:
         """The value itself: an input of its own, or what it refers to."""
@@ -126,7 +137,7 @@ class Compiler:
             if target is None:
                 names = self.places.names()
                 hint = did_you_mean(quantity.reference, names) or "name a key of [shared], or an address such as beam.line.fwhm"
-                self.complain(written, f'"@{quantity.reference}" refers to nothing', hint)
+                self.complain(written, f'"@{quantity.reference}" refers to nothing', hint, inside(address, written))
                 return Expression()
             return self.expression(target, way)
         self.sources[address] = (quantity, written)
@@ -140,7 +151,7 @@ class Compiler:
         quantity = written.quantity
         dimension = self.places.dimension(quantity)
         along = key.along_line and self.places.along_line(quantity)
-        expected = "1" if quantity.relative or along else key.unit
+        expected = "1" if quantity.relative or along or written.unit == "1" else key.unit
         if (quantity.times or quantity.reference) and not along and not fits(dimension, expected):
             self.complain(written, f"the whole is {dimension_text(dimension or ())}", wanted(expected))
         self.pass_bounds(written, Bounds.of(key))
@@ -178,6 +189,8 @@ class Compiler:
             return self.field(line["fwhm"], keys_of(Line)["fwhm"])
         if "hwhm" in line:
             return Expression(2.0).times(self.field(line["hwhm"], HWHM))
+        if self.faults.found:  # the width may be what is wrong
+            return Expression()
         self.complain(written, "FWHM without a width of the line", 'give line = { fwhm = "…" }, or write the distance in Hz')
         return Expression()
 
@@ -233,7 +246,7 @@ class Compiler:
         written = table.quantities.get("size")
         numbers = dict(made.quantities)
         if written is not None and "dof" not in numbers:
-            law = written.quantity.law
+            law = self.places.law(written.quantity)
             spread = 0.0 if law is None else relative_spread(law)
             if spread > 0.0:
                 numbers["dof"] = Expression(float(dof_from_spread(spread)))
@@ -278,7 +291,9 @@ class Compiler:
         known = groups.setdefault(group, (names, quantity.weights, address))
         if known[0] != names or known[1] != quantity.weights:
             what = "members" if known[0] != names else "weights"
-            self.complain(written, f"group {group!r} with other {what} than in {known[2]}", f"tied ensembles share names, order and weights: {', '.join(known[0])}")
+            names_ = f" ({', '.join(names)})" if what == "members" else ""
+            key = "weights" if what == "weights" and "weights" in quantity.written else "values"
+            self.complain(written, f"group {group!r} with other {what}{names_} than in {known[2]}", f"tied ensembles share names, order and weights: {', '.join(known[0])}", key)
             return None
         laws = []
         for _, member in quantity.members:

@@ -36,14 +36,26 @@ def checked_correlations(
     kept = tuple(found.values())
     broken = impossible_set(kept)
     if broken:
-        last = next(c for c in reversed(study.correlation))
+        last = next(c for c in reversed(study.correlation) if set(c.between) <= set(broken) | ends_of(c, broken, places))
         names = ", ".join(broken)
         _say(faults, last, f"the correlations of {names} cannot all hold", "the matrix is not positive semi-definite: weaken one of them")
     return kept
 
 
+def ends_of(one: Correlated, broken: Sequence[str], places: Places) -> set[str]:
+    """The names of a correlation that lead to inputs of an impossible set."""
+    found = set()
+    for name in one.between:
+        written = places.find(name)
+        while written is not None and written.quantity.reference and written.address not in broken:
+            written = places.find(written.quantity.reference)
+        if written is not None and written.address in broken:
+            found.add(name)
+    return found
+
+
 def _say(faults: Faults, one: Correlated, found: str, wanted: str) -> None:
-    faults.add(one.line, "correlation", found, wanted)
+    faults.add(one.line, f"correlation[{one.place}].between", found, wanted)
 
 
 def _input_of(name: str, one: Correlated, laws: dict[str, object], places: Places, faults: Faults) -> str | None:

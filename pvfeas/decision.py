@@ -13,13 +13,15 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import special
 
+from pvfeas.keys import keys_of
 from pvfeas.laws import Array
-from pvfeas.limits import chance_of_limit, limit, outcome_quantile, planned_limit, two_sided_z
+from pvfeas.limits import chance_of_limit, limit, lowest_accepted, outcome_quantile, root_of, two_sided_z
 from pvfeas.results import Contract
 from pvfeas.tables import Goal
 from pvfeas.thresholds import effective_threshold, p_value
 
 Interval = tuple[Array, Array]
+QUADRATIC = ("abs-plus-z", "feldman-cousins-bounded")  # limits that a relative uncertainty widens exactly
 
 
 @dataclass(frozen=True)
@@ -59,15 +61,23 @@ def default_construction(sides: int) -> str:
     return "abs-plus-z" if sides == 2 else "feldman-cousins-bounded"
 
 
+def confidence_of(goal: Goal) -> float:
+    """The goal's confidence level, its declared default where none is given."""
+    return float(str(keys_of(Goal)["confidence"].default)) if goal.confidence is None else goal.confidence
+
+
 def rule_for(goal: Goal, predicted_sign: float) -> Rule:
-    """The rule of a goal. Power defaults to one half where the goal does not ask for one."""
-    asked = goal.significance
+    """The rule of a goal. Power defaults to one half where the goal does not ask for one.
+
+    A false claim of a sign is one-sided, whatever the sides of the goal.
+    """
+    asked, sides = goal.significance, 1 if goal.kind == "sign" else goal.sides
     k = 0.0
     if goal.kind in ("detect", "sign") and asked is not None:
-        k = effective_threshold(asked, goal.sides, goal.trials, goal.looks)
+        k = effective_threshold(asked, sides, goal.trials, goal.looks)
     return Rule(
-        kind=goal.kind, k=k, power=0.5 if goal.power is None else goal.power, sides=goal.sides,
-        predicted_sign=predicted_sign, confidence=goal.confidence,
+        kind=goal.kind, k=k, power=0.5 if goal.power is None else goal.power, sides=sides,
+        predicted_sign=predicted_sign, confidence=confidence_of(goal),
         construction=goal.construction or default_construction(goal.sides),
         relative_uncertainty=goal.relative_uncertainty or 1.0, asked=asked, trials=goal.trials, looks=goal.looks,
         power_asked=goal.power is not None,
@@ -79,7 +89,7 @@ def limit_rule_for(goal: Goal, predicted_sign: float) -> Rule:
     construction = goal.construction or default_construction(goal.sides)
     return Rule(
         kind="exclude", power=0.5 if goal.power is None else goal.power, sides=goal.sides,
-        predicted_sign=predicted_sign, confidence=goal.confidence, construction=construction,
+        predicted_sign=predicted_sign, confidence=confidence_of(goal), construction=construction,
     )  # fmt: skip
 
 
@@ -99,39 +109,60 @@ def needed_signal(rule: Rule, sigma0: Array, sigma1: Array, relative_variance: A
 
 
 def needed_to_exclude(rule: Rule, sigma: Array, relative_variance: Array) -> Array:
-    """The signal that is excluded with the asked power if there is none.
+    """The signal that is excluded with the asked power if there is none: the limit at the outcome's power quantile.
 
-    Without relative uncertainty e: the limit at the power quantile q of the outcome, (q + z) sigma for
-    abs-plus-z and feldman-cousins-bounded. With it these two solve (s - q sigma)^2 = z^2 (sigma^2 + e^2 s^2);
-    the other constructions are divided by 1 - z e, which is never too small. Infinite where z e >= 1.
-    Derived: the scale's uncertainty acts on the excluded signal itself.
+    (z + Phi^-1((1 + power)/2)) sigma for abs-plus-z, (z + z_power) sigma for feldman-cousins-bounded;
+    infinite where the relative uncertainty is too large for any limit.
     """
-    z = float(two_sided_z(rule.confidence))
-    spread = z**2 * np.asarray(relative_variance)
-    possible = spread < 1.0
-    room = np.where(possible, 1.0 - spread, 1.0)
-    if rule.construction in ("abs-plus-z", "feldman-cousins-bounded"):
-        q = outcome_quantile(rule.construction, rule.power)
-        size = (q + np.sqrt(np.maximum(q**2 - room * (q**2 - z**2), 0.0))) / room
-    else:
-        plain = planned_limit(rule.construction, rule.confidence, rule.power)
-        size = plain / (1.0 - np.sqrt(np.where(possible, spread, 0.0)))
+    size = outcome_limit(rule, np.asarray(outcome_quantile(rule.construction, rule.power)), relative_variance)
+    return _times_sigma(size, sigma)
+
+
+def _times_sigma(size: Array, sigma: Array) -> Array:
     with np.errstate(invalid="ignore"):
-        return np.asarray(np.where(possible, size * sigma, np.inf))
+        return np.asarray(np.where(np.isinf(size), np.inf, size * sigma))
 
 
 def outcome_limit(rule: Rule, outcome: Array, relative_variance: Array) -> Array:
-    """The limit over sigma that an outcome over sigma gives, relative uncertainty included."""
+    """The limit over sigma that an outcome over sigma gives, a relative uncertainty e of the splitting included.
+
+    An excluded s widens its own outcome to w = sqrt(1 + e^2 s^2): the limit solves s/w = L(x/w), which for
+    abs-plus-z and feldman-cousins-bounded at x >= 0 is (s - x)^2 = z^2 (1 + e^2 s^2). The other
+    constructions are divided by 1 - z e, which is never too small. Infinite where z e >= 1. Derived.
+    """
     z = float(two_sided_z(rule.confidence))
-    spread = z**2 * np.asarray(relative_variance)
-    possible = spread < 1.0
-    room = np.where(possible, 1.0 - spread, 1.0)
-    if rule.construction == "abs-plus-z":
-        q = np.abs(outcome)
-        size = (q + np.sqrt(np.maximum(q**2 - room * (q**2 - z**2), 0.0))) / room
+    relative = np.asarray(relative_variance, dtype=float)
+    possible = z**2 * relative < 1.0
+    spread = np.where(possible, z**2 * relative, 0.0)
+    room = 1.0 - spread
+    if rule.construction in QUADRATIC:
+        x = np.abs(outcome) if rule.construction == "abs-plus-z" else np.maximum(outcome, 0.0)
+        size = (x + np.sqrt(spread * x**2 + room * z**2)) / room
+        if rule.construction == "feldman-cousins-bounded" and np.any(outcome < 0.0):
+            size = np.where(outcome < 0.0, _limit_below_zero(rule, outcome, spread / z**2), size)
     else:
-        size = limit(rule.construction, outcome, rule.confidence) / (1.0 - np.sqrt(np.where(possible, spread, 0.0)))
+        size = limit(rule.construction, outcome, rule.confidence) / (1.0 - np.sqrt(spread))
     return np.asarray(np.where(possible, size, np.inf))
+
+
+def _limit_below_zero(rule: Rule, outcome: Array, relative: Array) -> Array:
+    """outcome_limit for feldman-cousins-bounded and outcomes below zero; relative < 1/z^2."""
+    plain = limit(rule.construction, outcome, rule.confidence)
+    if not np.any(relative):
+        return plain
+    z = two_sided_z(rule.confidence)
+    below, relative = np.broadcast_arrays(np.minimum(outcome, 0.0), relative)
+    highest = z / np.sqrt(1.0 - z**2 * relative)
+    found = root_of(lambda s: _least_accepted(rule, s, relative) - below, np.zeros_like(below), highest)
+    return np.asarray(np.where(relative > 0.0, found, plain))
+
+
+def _least_accepted(rule: Rule, size: Array, relative: Array) -> Array:
+    """Outcome over sigma up to which a signal over sigma is excluded: w x1(s/w), w = sqrt(1 + e^2 s^2)."""
+    wide = np.sqrt(1.0 + relative * size**2)
+    if rule.construction == "abs-plus-z":
+        return np.asarray(size - wide * two_sided_z(rule.confidence))
+    return np.asarray(wide * lowest_accepted(size / wide, rule.confidence))
 
 
 def signal_intervals(
@@ -147,9 +178,7 @@ def signal_intervals(
         least = needed_signal(rule, sigma0, sigma1, relative_variance)
         return ((least, infinite), (-infinite, -least))
     if rule.kind == "exclude":
-        with np.errstate(invalid="ignore"):
-            least = outcome_limit(rule, noise, relative_variance) * sigma0
-        least = np.where(np.isnan(least), np.inf, least)
+        least = _times_sigma(outcome_limit(rule, noise, relative_variance), sigma0)
         return ((least, infinite), (-infinite, -least))
     up, down = rule.k * sigma0 - sigma1 * noise, -rule.k * sigma0 - sigma1 * noise
     if rule.kind == "sign":  # the claimed sign must be the true one
@@ -187,20 +216,19 @@ def _phi(distance: Array, sigma: Array) -> Array:
 
 def _chance_to_exclude(rule: Rule, size: Array, sigma: Array, relative_variance: Array) -> Array:
     z = float(two_sided_z(rule.confidence))
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         ratio = np.where(np.asarray(sigma) > 0, size / sigma, np.where(size > 0, np.inf, 0.0))
-    spread = np.asarray(relative_variance)
-    if rule.construction in ("abs-plus-z", "feldman-cousins-bounded"):
-        with np.errstate(invalid="ignore", over="ignore"):
-            outcome = ratio - z * np.sqrt(1.0 + np.where(spread > 0, spread * ratio**2, 0.0))
-            outcome = np.where(np.isnan(outcome), np.where(z**2 * spread < 1.0, np.inf, -np.inf), outcome)
+    ratio = np.minimum(ratio, 1e100)
+    relative = np.asarray(relative_variance, dtype=float)
+    possible = z**2 * relative < 1.0
+    relative = np.where(possible, relative, 0.0)
+    if rule.construction in QUADRATIC:
+        found = special.ndtr(_least_accepted(rule, ratio, relative))
         if rule.construction == "abs-plus-z":
-            return np.maximum(0.0, 2.0 * special.ndtr(outcome) - 1.0)
-        if not np.any(spread):
-            return chance_of_limit(rule.construction, ratio, rule.confidence)
-        return np.asarray(special.ndtr(outcome))
-    shrunk = ratio * np.maximum(0.0, 1.0 - z * np.sqrt(spread))
-    return chance_of_limit(rule.construction, shrunk, rule.confidence)
+            found = np.maximum(0.0, 2.0 * found - 1.0)
+    else:
+        found = chance_of_limit(rule.construction, ratio * (1.0 - z * np.sqrt(relative)), rule.confidence)
+    return np.asarray(np.where(possible, found, 0.0))
 
 
 DRAWN = "every uncertain input of the study, once per draw and constant in it"
@@ -209,21 +237,22 @@ NULLS: dict[str, Callable[[Rule], str]] = {
     "detect": lambda rule: "no splitting",
     "sign": lambda rule: "a splitting of the opposite sign",
     "measure": lambda rule: "none: the splitting is measured to a relative uncertainty",
-    "exclude": lambda rule: "no splitting; limits are stated on its size"
-    if rule.sides == 2
-    else "no splitting; limits are stated in the predicted direction",
+    "exclude": lambda rule: (
+        "no splitting; limits are stated on its size"
+        if rule.sides == 2
+        else "no splitting; limits are stated in the predicted direction"
+    ),
 }
 
 
 def contract(rule: Rule, floor_declared: bool, schedule_declared: bool) -> Contract:
     """The decision contract that every result prints."""
     claims = rule.kind in ("detect", "sign")
-    sides = 1 if rule.kind == "sign" else rule.sides
     return Contract(
         null=NULLS[rule.kind](rule),
         threshold=rule.asked if claims else None,
         threshold_used=rule.k if claims else None,
-        p=p_value(rule.asked, sides) if claims and rule.asked is not None else None,
+        p=p_value(rule.asked, rule.sides) if claims and rule.asked is not None else None,
         sides=rule.sides, trials=rule.trials, looks=rule.looks,
         power=rule.power if rule.power_asked else None,
         confidence=rule.confidence if rule.kind == "exclude" else None,
@@ -231,4 +260,3 @@ def contract(rule: Rule, floor_declared: bool, schedule_declared: bool) -> Contr
         drawn=DRAWN, unknown_after=UNKNOWN_AFTER,
         floor_declared=floor_declared, schedule_declared=schedule_declared,
     )  # fmt: skip
-

@@ -23,9 +23,10 @@ class UsageError(PvfeasError, ValueError):
 class QuantityError(PvfeasError, ValueError):
     """A quantity that cannot be read: what was found, what would be right."""
 
-    def __init__(self, found: str, wanted: str) -> None:
+    def __init__(self, found: str, wanted: str, key: str = "") -> None:
         self.found = found
         self.wanted = wanted
+        self.key = key  # inside the quantity's table, dotted: "values.HF", "scale[0].from"
         super().__init__(f"{found}; {wanted}")
 
 

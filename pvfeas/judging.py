@@ -32,6 +32,7 @@ def judge(study: Study, problem: Problem, maker: Compiler, faults: Faults) -> Pr
         systematics_fit(study, one, written, faults)
         if not faults:
             unresolved(one, written, nominal, maker)
+            signless(problem, one, written, nominal, maker)
             absent(one, maker)
         scenarios.append(_limited(one, limits))
     for one in problem.scenarios:
@@ -113,6 +114,12 @@ def unresolved(one: ScenarioProblem, written: Scenario, nominal: Draws, maker: C
         )  # fmt: skip
     elif ratio > DOUBTFUL:
         maker.warn("nearly resolved", written.splitting.address, f"the splitting is {ratio:.2g} of the width: the purity factor holds for unresolved lines")
+
+
+def signless(problem: Problem, one: ScenarioProblem, written: Scenario, nominal: Draws, maker: Compiler) -> None:
+    """One side means that the sign is predicted: that of the splitting's median."""
+    if problem.goal.sides == 1 and float(np.reshape(one.splitting.at(nominal), -1)[0]) == 0.0:
+        maker.complain(written.splitting, "sides = 1 with a splitting whose median is zero", "a predicted sign is needed, or sides = 2")
 
 
 def absent(one: ScenarioProblem, maker: Compiler) -> None:

@@ -76,7 +76,7 @@ def contributions(inputs: Sequence[Input], log_times: np.ndarray, moved: Sequenc
 
 
 def adequate(log_time: float, u_ln: float, q05: float | None, q95: float | None) -> bool | None:
-    """JCGM 101:2008 clause 8 on the 90 % interval of ln t with one significant digit.
+    """JCGM 101:2008 clause 8 on the 90 % interval of ln t with two significant digits.
 
     Adequate where both ends of ln t ± 1.645 u lie within the numerical tolerance of ln q05 and ln q95.
     """
@@ -84,7 +84,7 @@ def adequate(log_time: float, u_ln: float, q05: float | None, q95: float | None)
         return False
     if u_ln == 0.0:
         return bool(abs(log_time - np.log(q05)) < 1e-6 and abs(log_time - np.log(q95)) < 1e-6)
-    expanded, delta = float(special.ndtri(0.95)) * u_ln, numerical_tolerance(u_ln)
+    expanded, delta = float(special.ndtri(0.95)) * u_ln, numerical_tolerance(u_ln, digits=2)
     low, high = abs(log_time - expanded - np.log(q05)), abs(log_time + expanded - np.log(q95))
     return bool(low <= delta and high <= delta)
 

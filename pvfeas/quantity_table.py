@@ -27,7 +27,7 @@ MOST_MEMBERS = 100
 
 def inside(key: str, error: QuantityError) -> QuantityError:
     """The same error, said to be about one key of the table."""
-    return QuantityError(f"{key}: {error.found}", error.wanted)
+    return QuantityError(error.found, error.wanted, f"{key}.{error.key}" if error.key else key)
 
 
 def parse_table(table: dict[str, Any], canonical: Canonical, splitting: bool = False) -> Quantity:
@@ -35,9 +35,11 @@ def parse_table(table: dict[str, Any], canonical: Canonical, splitting: bool = F
     allowed = (*KEYS, "of") if splitting else KEYS
     for key in table:
         if key not in allowed:
-            raise QuantityError(f"the key {key!r}", did_you_mean(key, allowed) or f"known keys are {', '.join(allowed)}")
+            raise QuantityError(f"the key {key!r} is not known here", did_you_mean(key, allowed) or f"known keys are {', '.join(allowed)}", key)
     _texts(table)
     relative = _flag(table)
+    if relative and not splitting:
+        raise QuantityError("relative on what is no splitting", "drop it: only a splitting is a fraction of the frequency", "relative")
     inner = Canonical("*") if "times" in table else Canonical("1") if relative else canonical
     starts = [k for k in ("value", "values", "difference") if k in table] + [k for k in table if k in PERCENTILES][:1]
     if len(starts) != 1:
@@ -59,10 +61,10 @@ def parse_table(table: dict[str, Any], canonical: Canonical, splitting: bool = F
 def _texts(table: dict[str, Any]) -> None:
     for key in TEXTS:
         if key in table and not isinstance(table[key], str):
-            raise QuantityError(f"{key}: {table[key]!r}", "a text in quotes is needed")
+            raise QuantityError(f"{_short(table[key])} is no text", "a text in quotes is needed", key)
     status = table.get("status")
     if status is not None and status not in STATUSES:
-        raise QuantityError(f"status: {status!r}", did_you_mean(status, STATUSES) or f"one of {', '.join(STATUSES)}")
+        raise QuantityError(f"{status!r} is no status", did_you_mean(status, STATUSES) or f"one of {', '.join(STATUSES)} is needed", "status")
     if "group" in table and "values" not in table:
         raise QuantityError("group without values", "group ties ensembles: give values = {…}")
     for key, partner in (("weights", "values"), ("discrepancy", "values"), ("law", None), ("unit", None)):
@@ -73,7 +75,7 @@ def _texts(table: dict[str, Any]) -> None:
 def _flag(table: dict[str, Any]) -> bool:
     relative = table.get("relative", False)
     if not isinstance(relative, bool):
-        raise QuantityError(f"relative: {relative!r}", "true or false is needed")
+        raise QuantityError(_short(relative), "true or false is needed", "relative")
     return relative
 
 
@@ -91,9 +93,9 @@ def _value(written: Any, table: dict[str, Any], canonical: Canonical, key: str) 
     """A text or number, with the table's unit behind it where it has one."""
     unit = table.get("unit")
     if unit is not None and not isinstance(unit, str):
-        raise QuantityError(f"unit: {unit!r}", "a text in quotes is needed")
+        raise QuantityError(f"{_short(unit)} is no unit", "a text in quotes is needed", "unit")
     if isinstance(written, dict):
-        raise QuantityError(f"{key}: a table", "a text or a number is needed")
+        raise QuantityError("a table", "a text or a number is needed", key)
     if unit is not None:
         written = f"{written} {unit}"
     try:
@@ -120,7 +122,7 @@ def _demonstrated(table: dict[str, Any], canonical: Canonical) -> Quantity | Non
 def _list(table: dict[str, Any], key: str, read: Any) -> list[Any]:
     entries = table.get(key, [])
     if not isinstance(entries, list):
-        raise QuantityError(f"{key}: {entries!r}", f"a list is needed: {key} = [ … ]")
+        raise QuantityError(f"{_short(entries)} where a list belongs", f"a list is needed: {key} = [ … ]", key)
     found = []
     for place, entry in enumerate(entries):
         try:
@@ -131,9 +133,27 @@ def _list(table: dict[str, Any], key: str, read: Any) -> list[Any]:
 
 
 def _scale(entry: Any) -> Scale:
-    if not isinstance(entry, dict) or set(entry) != {"with", "from", "exponent"}:
-        raise QuantityError(f"{entry!r}", 'a table {with = "@…", from = "…", exponent = "…"} is needed')
-    return Scale(parse(entry["with"], "*"), parse(entry["from"], "*"), parse(entry["exponent"], "1"))
+    parts = {"with": "*", "from": "*", "exponent": "1"}
+    if not isinstance(entry, dict) or set(entry) != set(parts):
+        given = ", ".join(entry) if isinstance(entry, dict) else _short(entry)
+        raise QuantityError(f"a scale of {given or 'nothing'}", 'a table {with = "@…", from = "…", exponent = "…"} is needed')
+    found = {}
+    for name, unit in parts.items():
+        try:
+            found[name] = parse(entry[name], unit)
+        except QuantityError as error:
+            raise inside(name, error) from None
+        law = found[name].law
+        if name != "exponent" and isinstance(law, Exact) and law.value <= 0.0:
+            raise QuantityError(f"{_short(entry[name])} is not positive", "a scale compares positive quantities", name)
+    return Scale(found["with"], found["from"], found["exponent"])
+
+
+def _short(value: Any) -> str:
+    """A value as it was written, tables and lists by name."""
+    if isinstance(value, dict | list):
+        return "a table" if isinstance(value, dict) else "a list"
+    return str(value).lower() if isinstance(value, bool) else f'"{value}"' if isinstance(value, str) else str(value)
 
 
 def _percentiles(table: dict[str, Any], canonical: Canonical) -> Quantity:
@@ -146,11 +166,11 @@ def _percentiles(table: dict[str, Any], canonical: Canonical) -> Quantity:
     for key in pair:
         law = _value(table[key], table, canonical, key).law
         if not isinstance(law, Exact):
-            raise QuantityError(f"{key}: {table[key]!r}", "an exact value is needed in a pair of percentiles")
+            raise QuantityError(f"{_short(table[key])} is not exact", "an exact value is needed in a pair of percentiles", key)
         ends.append(law.value)
     name = table.get("law", "lognormal" if ends[0] > 0 else "normal")
     if name not in ("normal", "lognormal"):
-        raise QuantityError(f"law: {name!r}", "normal or lognormal is needed")
+        raise QuantityError(f"{_short(name)} is no law here", "normal or lognormal is needed", "law")
     if ends[0] >= ends[1]:
         raise QuantityError(f"{pair[0]} is not below {pair[1]}", "the percentiles must rise")
     return Quantity(table, law=_between(name, ends, float(special.ndtri(PERCENTILES[pair[1]]))))
@@ -168,21 +188,24 @@ def _between(name: str, ends: list[float], z: float) -> Law:
 def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
     values = table["values"]
     if not isinstance(values, dict) or not values:
-        raise QuantityError("values without members", 'a table of calculations is needed: values = {HF = "…", B3LYP = "…"}')
+        found = "an empty table" if values == {} else f"{_short(values)} where a table by name belongs"
+        raise QuantityError(found, 'a table of calculations by name is needed: values = {HF = "…", B3LYP = "…"}', "values")
     if len(values) > MOST_MEMBERS:
-        raise QuantityError(f"{len(values)} members", f"at most {MOST_MEMBERS} are enumerated")
+        raise QuantityError(f"{len(values)} members", f"at most {MOST_MEMBERS} are enumerated", "values")
     members = tuple((name, _value(one, table, canonical, f"values.{name}")) for name, one in values.items())
     for name, member in members:
         if member.law is None:
-            raise QuantityError(f"values.{name}: a reference", "members are written out")
+            raise QuantityError("a reference", "members are written out", f"values.{name}")
     weights = table.get("weights", {})
     if isinstance(weights, list) and len(weights) == len(members):
         weights = dict(zip(values, weights, strict=True))
     if not isinstance(weights, dict) or (weights and set(weights) != set(values)):
-        raise QuantityError("weights that do not match the members", "one weight for each member is needed, by name")
+        found = f"{len(weights)} weights for {len(values)} members" if isinstance(weights, dict | list) else f"{_short(weights)} where a list belongs"
+        raise QuantityError(found, "one weight for each member is needed, in order or by name", "weights")
     numbers = [weights.get(name, 1.0) for name in values]
-    if not all(isinstance(w, int | float) and not isinstance(w, bool) and 0 < w < 1e12 for w in numbers):
-        raise QuantityError("a weight that is not a positive number", "weights are positive; they need not add to 1")
+    for weight in numbers:
+        if isinstance(weight, bool) or not isinstance(weight, int | float) or not 0 < weight < 1e12:
+            raise QuantityError(f"the weight {_short(weight)} is not a positive number", "weights are positive; they need not add to 1", "weights")
     total = float(sum(numbers))
     return Quantity(table, members=members, weights=tuple(float(w) / total for w in numbers))
 
@@ -191,7 +214,7 @@ def _difference(table: dict[str, Any], canonical: Canonical) -> Quantity:
     """Two absolute values subtracted at full precision (mpmath), in the canonical unit."""
     pair = table["difference"]
     if not isinstance(pair, list) or len(pair) != 2 or not all(isinstance(one, str) for one in pair):
-        raise QuantityError("difference: not two texts", 'two absolute values are needed: difference = ["… cm^-1", "… cm^-1"]')
+        raise QuantityError("not two texts", 'two absolute values are needed: difference = ["… cm^-1", "… cm^-1"]', "difference")
     if canonical.unit not in TABLES:
         raise QuantityError("difference of a compound unit", "only frequencies and energies are subtracted")
     return Quantity(table, law=Exact(exact_difference(pair[0], pair[1], canonical.unit)))
@@ -206,8 +229,8 @@ def exact_difference(first: str, second: str, canonical: str) -> float:
 def _exact(text: str, canonical: str) -> Any:
     match = SINGLE.fullmatch(tidy(text))
     if match is None:
-        raise QuantityError(f'difference: "{text}"', "an exact number with its unit is needed")
+        raise QuantityError(f'"{text}" cannot be read', "an exact number with its unit is needed", "difference")
     factor = TABLES[canonical].get(match["unit"])
     if factor is None:
-        raise QuantityError(f'difference: the unit {match["unit"]!r}', "a frequency or an energy is needed")
+        raise QuantityError(f'the unit {match["unit"]!r}', "a frequency or an energy is needed", "difference")
     return mpmath.mpf(match["value"]) * mpmath.mpf(str(factor))

@@ -29,9 +29,10 @@ class Reader:
         self.known: dict[tuple[str, str], Any] = {}
         self.said: set[tuple[str, str]] = set()
 
-    def complain(self, leaf: Leaf, found: str, wanted_: str) -> None:
-        """A fault at a leaf, reported where it was written."""
-        self.faults.add(leaf.line, leaf.address, found, wanted_, leaf.file)
+    def complain(self, leaf: Leaf, found: str, wanted_: str, key: str = "") -> None:
+        """A fault at a leaf, or at a key inside it, reported where it was written."""
+        line = self.faults.line_inside(leaf.address, key, leaf.line) if key and leaf.line else leaf.line
+        self.faults.add(line, f"{leaf.address}.{key}" if key not in ("", "value") else leaf.address, found, wanted_, leaf.file)
 
     def table(self, node: Any, table: str, kind: str, scenario: str, address: str, line: int, parent: Any) -> Table:
         """One table: unknown keys, wrong values, missing keys."""
@@ -88,7 +89,7 @@ class Reader:
         try:
             found = parse(value, key.unit, key.along_line, splitting)
         except QuantityError as error:
-            self.complain(leaf, error.found, error.wanted)
+            self.complain(leaf, error.found, error.wanted, error.key)
             return None
         return Written(address=leaf.address, line=leaf.line, file=leaf.file, quantity=found, unit=key.unit)
 

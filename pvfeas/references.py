@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from pvfeas.errors import QuantityError
+from pvfeas.laws import Law
 from pvfeas.quantity import Quantity
 from pvfeas.study import Study, Table, Written
 from pvfeas.units import dimension_of
@@ -55,6 +56,17 @@ class Places:
             return quantity.along_line
         target = self.find(quantity.reference)
         return target is not None and self.along_line(target.quantity, (*way, quantity.reference))
+
+    def law(self, quantity: Quantity) -> Law | None:
+        """The law of a quantity, or of what it refers to; None for products, scales and ensembles."""
+        way: set[str] = set()
+        while quantity.reference and quantity.reference not in way and not (quantity.times or quantity.scale):
+            way.add(quantity.reference)
+            target = self.find(quantity.reference)
+            if target is None:
+                return None
+            quantity = target.quantity
+        return None if quantity.times or quantity.scale else quantity.law
 
     def dimension(self, quantity: Quantity, way: tuple[str, ...] = ()) -> Dimension | None:
         """Dimension of a quantity with all its factors; None where it cannot be known."""

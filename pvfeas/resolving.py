@@ -8,10 +8,13 @@ import re
 from collections.abc import Mapping
 from typing import Any
 
+from pvfeas.goals import ONLY
 from pvfeas.keys import Key
 from pvfeas.study import Scenario, Study, Table, Written
+from pvfeas.tables import Goal
 from pvfeas.vocabulary import keys_for
 
+GOALS = Goal.kinds
 BARE = re.compile(r"[A-Za-z0-9_-]+")
 
 
@@ -37,7 +40,7 @@ def goal_lines(study: Study) -> list[str]:
     lines = ["[goal]"]
     for name, key in keys_for("goal").items():
         value = study.goal.get(name, key.default)
-        if value is None:
+        if value is None or study.goal.get("kind") not in ONLY.get(name, GOALS):
             continue
         lines.append(f"{name} = {_goal_value(value, key)}")
     return lines
@@ -82,7 +85,7 @@ def _splitting(scenario: Scenario) -> str:
 def _table(table: Table, part: str, address: str) -> str:
     on = str(table.options.get("on", ""))
     keys = keys_for(part, table.kind or on)
-    content: dict[str, Any] = {"kind": table.kind} if table.kind else {}
+    content: dict[str, Any] = {"kind": table.kind} if part == "technique" else {}
     for name, key in keys.items():
         if name == "name":
             continue

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import Any
 
 from pvfeas.inheritance import Leaf, Node, Tree, merge
@@ -9,8 +10,9 @@ from pvfeas.reading import Reader, _short
 from pvfeas.study import Scenario, Table, Written
 from pvfeas.suggestions import did_you_mean, suggest
 from pvfeas.techniques import TECHNIQUES
-from pvfeas.vocabulary import LATER, PARTS, SCENARIO, SPLITTING
+from pvfeas.vocabulary import ALTERNATIVES, LATER, PARTS, SCENARIO, SPLITTING
 
+NAME = re.compile(r"[\w-]+")
 OF = ("difference", "one enantiomer")
 HOW_SPLITTING = 'write splitting = { value = "1.1(3) Hz", of = "difference" } (or of = "one enantiomer")'
 
@@ -22,7 +24,7 @@ def read_scenario(tree: Tree, parent: Tree | None, own: Tree, reader: Reader) ->
     _refuse_reference(nodes, name, tree, reader)
     splitting = read_splitting(tree, above, reader)
     missing_technique = "technique" not in nodes
-    technique = _technique(nodes.get("technique"), f"{name}.technique", own, above, reader, "technique" in own.nodes)
+    technique = _technique(nodes.get("technique"), f"{name}.technique", own.lines["technique"], above, reader, name)
     if missing_technique and not _near_miss(nodes, "technique") and (above is None or "technique" in above):
         reader.faults.add(tree.line, f"{name}.technique", "is missing", 'write technique = { kind = "…", … }')
     tables = {
@@ -76,37 +78,37 @@ def _splitting(leaf: Leaf, reader: Reader) -> tuple[Written, str] | None:
     if "of" not in value:
         near = next((key for key in value if suggest(key, ("of",)) and len(key) <= 3), "")
         if near:
-            reader.complain(leaf, f"the key {near!r} is not known here", "did you mean of?")
+            reader.complain(leaf, f"the key {near!r} is not known here", "did you mean of?", near)
         else:
-            reader.complain(leaf, "of is missing", 'say of = "difference" (nu(a) - nu(b)) or of = "one enantiomer" (half of it)')
+            reader.complain(leaf, "is missing", 'say of = "difference" (nu(a) - nu(b)) or of = "one enantiomer" (half of it)', "of")
         return None
     if value["of"] not in OF:
         hint = did_you_mean(str(value["of"]), OF) or f"one of {', '.join(OF)} is needed"
-        reader.complain(leaf, f"of: {_short(value['of'])}", hint)
+        reader.complain(leaf, f"{_short(value['of'])} is neither", hint, "of")
         return None
     written = reader.quantity(leaf, SPLITTING, splitting=True)
     return None if written is None else (written, str(value["of"]))
 
 
 def _technique(
-    node: Any, address: str, own: Tree, above: Node | None, reader: Reader, written_here: bool
+    node: Any, address: str, line: int, above: Node | None, reader: Reader, scenario: str
 ) -> Table | None:
     """The technique's table; rules of the technique itself are checked too."""
     if node is None:
         return None
     parent = above.get("technique") if above else None
-    line = own.lines["technique"]
     kind = reader.kind(node, address, line, TECHNIQUES, parent)
     if not kind:
         return None
     same = parent if isinstance(parent, dict) and _kind_of(parent) == kind else None
-    table = reader.table(node, "technique", kind, own.name, address, line, same)
-    given: dict[str, Any] = {name: True for name in node} | dict(table.options)
+    table = reader.table(node, "technique", kind, scenario, address, line, same)
+    given: dict[str, Any] = dict.fromkeys(node, True) | dict(table.options)
     before: set[tuple[str, str]] = set()
     if same is not None:
         options = {key: leaf.value for key, leaf in same.items() if isinstance(leaf, Leaf)}
         before = {(key, found) for key, found, _ in TECHNIQUES[kind].rules({k: options.get(k, True) for k in same})}
     absorbed = {suggest(one, TECHNIQUES[kind].__dataclass_fields__) for one in node if one not in TECHNIQUES[kind].__dataclass_fields__}
+    absorbed |= {other for group in ALTERNATIVES if group & absorbed for other in group}
     for key, found, right in TECHNIQUES[kind].rules(given):
         if (key, found) not in before and key not in absorbed:
             leaf = node.get(key)
@@ -134,7 +136,8 @@ def _systematics(node: Any, tree: Tree, own: Tree, above: Node | None, reader: R
         if isinstance(entry, Leaf):
             reader.complain(entry, f"{_short(entry.value)} where a table belongs", 'write { size = "0.1 Hz", averages = "never" }')
             continue
-        if name == "":
+        if not NAME.fullmatch(name):
+            reader.faults.add(line, address, f"{_short(name)} cannot name an entry", "use letters, digits, _ and -")
             continue
         parent = upper.get(name) if isinstance(upper, dict) else None
         found[name] = reader.table(entry, "systematics", _size_of(entry), tree.name, address, line, parent)
@@ -194,7 +197,7 @@ def _arm_b(nodes: Node, tree: Tree, own: Tree, reader: Reader) -> tuple[Table | 
             base = nodes.get("technique")
             merged = merge(base if isinstance(base, dict) else {}, value, "technique")
             same = base if isinstance(base, dict) and _kind_of(merged) == _kind_of(base) else None
-            technique = _technique(merged, f"{address}.technique", own, {"technique": same} if same else None, reader, True)
+            technique = _technique(merged, f"{address}.technique", _line_of(value, line), {"technique": same} if same else None, reader, tree.name)
         else:
             base = nodes.get("samples")
             merged = merge(base if isinstance(base, dict) else {}, value, "samples")

@@ -57,7 +57,8 @@ class Correlated(_Frozen):
 
     between: tuple[str, str]
     rho: float
-    line: int = 0
+    line: int = 0  # of between
+    place: int = 0  # in the list
 
 
 class Study(_Frozen):

@@ -15,13 +15,14 @@ from pvfeas.keys import Key
 from pvfeas.positions import positions
 from pvfeas.quantity import parse
 from pvfeas.reading import Reader, _short
-from pvfeas.scenarios import read_scenario
+from pvfeas.scenarios import NAME, read_scenario
 from pvfeas.study import Correlated, Scenario, Study, Written
-from pvfeas.suggestions import did_you_mean
+from pvfeas.suggestions import did_you_mean, suggest
 from pvfeas.vocabulary import SCENARIO, TOP, keys_for
 
 LARGEST = 1_000_000  # bytes
 MOST_SCENARIOS = 100
+DEEPEST = 50  # tables and lists inside each other
 Settings = Sequence[tuple[str, str]]
 
 
@@ -61,11 +62,22 @@ def load_text(text: str, file: str = "", settings: Settings = ()) -> Study:
     """Read a study from TOML text."""
     try:
         content = tomllib.loads(text)
+        if depth(content) > DEEPEST:
+            raise RecursionError
     except tomllib.TOMLDecodeError as error:
         raise StudyError([_syntax(str(error), text, file)]) from None
     except RecursionError:
         raise StudyError([Fault(file, 0, "", "tables or lists nested too deeply", "a study is flat")]) from None
     return _load(content, Faults(file, positions(text)), settings)
+
+
+def depth(content: Any) -> int:
+    """How deep tables and lists are nested, found level by level."""
+    level, deep = [content], 0
+    while level and deep <= DEEPEST:
+        deep += 1
+        level = [inner for one in level if isinstance(one, dict | list) for inner in (one.values() if isinstance(one, dict) else one)]
+    return deep
 
 
 def _syntax(message: str, text: str, file: str) -> Fault:
@@ -77,7 +89,8 @@ def _syntax(message: str, text: str, file: str) -> Fault:
         line = text.rstrip("\n").count("\n") + 1
     said = message.split(" (at ")[0]
     source = text.splitlines()[line - 1] if 0 < line <= len(text.splitlines()) else ""
-    unquoted = any(part.strip()[:1].isdigit() for part in source.split("=")[1:]) and " " in source.split("=", 1)[-1].strip()
+    values = [part.strip() for part in source.split("=")[1:]]
+    unquoted = any(one[:1] == "@" or (one[:1].isdigit() and " " in one) for one in values)
     wanted = 'quantities with units stand in quotes: x = "5 Hz"' if unquoted and "quote" not in said else "see the TOML rules"
     return Fault(file, line, "", f"this is not TOML: {said[:1].lower()}{said[1:]}", wanted)
 
@@ -123,7 +136,7 @@ def with_settings(content: dict[str, Any], settings: Settings, faults: Faults) -
         parts = [part for part in address.split(".") if part]
         scenarios = made.get("scenario", {})
         known = ["goal", "shared", "title", *(scenarios if isinstance(scenarios, dict) else {})]
-        if len(parts) < 2 and address != "title" or not parts or parts[0] not in known:
+        if (len(parts) < 2 and address != "title") or not parts or parts[0] not in known:
             hint = did_you_mean(parts[0] if parts else "", known) or f"an address begins with one of {', '.join(known)}"
             faults.add(0, address, "is no address of this study", hint, COMMAND_LINE)
             continue
@@ -210,6 +223,9 @@ def read_shared(content: Mapping[str, Any], reader: Reader) -> dict[str, Written
     found = {}
     for name, value in raw.items():
         leaf = _leaf(value, ("shared", name), f"shared.{name}", faults)
+        if not NAME.fullmatch(name):
+            reader.complain(leaf, f"{_short(name)} cannot be referred to", "use letters, digits, _ and -")
+            continue
         written = reader.quantity(leaf, Key("quantity", "shared", "*"))
         if written is not None:
             found[name] = written
@@ -233,11 +249,32 @@ def read_scenarios(content: Mapping[str, Any], reader: Reader) -> dict[str, Scen
     done = effective(trees, good, faults.at)
     found = {}
     for name, tree in done.items():
+        if name in broken_line(trees, good):
+            continue  # what it lacks cannot be known
         parent = done.get(tree.parent) if tree.parent != name else None
         scenario = read_scenario(tree, parent, trees[name], reader)
         if scenario is not None:
             found[name] = scenario
     return found
+
+
+def broken_line(trees: Mapping[str, Tree], good: Mapping[str, Any]) -> set[str]:
+    """Scenarios whose based_on (of themselves or further up) is wrong, misspelt or a circle."""
+    broken = set()
+    for name in trees:
+        way, here = [name], name
+        while True:
+            content = good[here]
+            if "based_on" not in content:
+                if any(key not in SCENARIO and suggest(key, SCENARIO) == "based_on" for key in content):
+                    broken.add(name)
+                break
+            here = content["based_on"]
+            if not isinstance(here, str) or here not in trees or here in way:
+                broken.add(name)
+                break
+            way.append(here)
+    return broken
 
 
 def _scenario_ok(name: str, value: Any, raw: Mapping[str, Any], faults: Faults) -> bool:
@@ -260,7 +297,7 @@ def _scenario_ok(name: str, value: Any, raw: Mapping[str, Any], faults: Faults) 
     if dropped is not None:
         if not isinstance(dropped, list) or not all(isinstance(one, str) for one in dropped):
             faults.at((*path, "without"), f"{name}.without", _short(dropped), 'a list of addresses is needed: ["systematics.NAME"]')
-        elif based_on is None:
+        elif based_on is None and not any(suggest(key, SCENARIO) == "based_on" for key in value if key not in SCENARIO):
             faults.at((*path, "without"), f"{name}.without", "without, but nothing is inherited", "give based_on, or drop it")
     return True
 
@@ -285,14 +322,14 @@ def read_correlations(content: Mapping[str, Any], faults: Faults) -> list[Correl
         near = " ".join(key for key in entry if key not in ("between", "rho"))
         good = isinstance(between, list) and len(between) == 2 and all(isinstance(one, str) for one in between)
         if not good and not (between is None and did_you_mean(near, ("between",))):
-            faults.at((*path, "between"), f"{address}.between", _short(between), "a list of two addresses is needed")
+            faults.at((*path, "between"), f"{address}.between", "is missing" if between is None else _short(between), "a list of two addresses is needed")
         number = isinstance(rho, int | float) and not isinstance(rho, bool)
         if not number and not (rho is None and did_you_mean(near, ("rho",))):
-            faults.at((*path, "rho"), f"{address}.rho", _short(rho), "a number between -1 and 1 is needed")
+            faults.at((*path, "rho"), f"{address}.rho", "is missing" if rho is None else _short(rho), "a number between -1 and 1 is needed")
         elif number and not -1.0 < float(rho) < 1.0:
             faults.at((*path, "rho"), f"{address}.rho", f"rho = {rho}", "a number between -1 and 1 is needed; for ±1 use one input")
         elif number and good:
-            found.append(Correlated(between=(between[0], between[1]), rho=float(rho), line=faults.line_of(path)))
+            found.append(Correlated(between=(between[0], between[1]), rho=float(rho), line=faults.line_of((*path, "between")), place=place))
     return found
 
 

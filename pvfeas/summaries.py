@@ -26,7 +26,7 @@ def five(
 
 def constant(value: float | None, unit: str) -> Quantiles:
     """A quantity that is the same in every draw."""
-    return five({name: (value, 0.0) for name in PROBABILITIES}, unit, value)
+    return five(dict.fromkeys(PROBABILITIES, (value, 0.0)), unit, value)
 
 
 def plain(sample: Sample, values: Array, unit: str, nominal: float | None) -> Quantiles:

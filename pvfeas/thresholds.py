@@ -5,9 +5,13 @@ from __future__ import annotations
 from functools import lru_cache
 
 import numpy as np
+from numpy.typing import ArrayLike
 from scipy import special
 
 from pvfeas.laws import Array
+
+LOWEST = 6.5  # sigma of the running sum below which a one-sided claim later on is ignored: 4e-11
+SURE = 10.0  # sigma above which looks are counted as if independent, p being below 2e-23
 
 
 def p_value(significance: float, sides: int) -> float:
@@ -20,8 +24,16 @@ def threshold_for(p: float, sides: int) -> float:
     return float(-special.ndtri(p / sides))
 
 
+def sigma_of_log_tail(log_tail: ArrayLike) -> Array:
+    """k with ln Phi(-k) = log_tail, also where the probability itself is below the smallest float."""
+    return np.asarray(-special.ndtri_exp(np.asarray(log_tail, dtype=float)))
+
+
 def local_p(p: float, trials: int) -> float:
-    """False-claim probability allowed in each of independent trials: 1 - (1 - p)^(1/trials) (Sidak 1967; from memory)."""
+    """False-claim probability left to each of independent trials: 1 - (1 - p)^(1/trials).
+
+    Sidak 1967, J. Am. Stat. Assoc. 62, 626 (from memory).
+    """
     return float(-np.expm1(np.log1p(-p) / trials))
 
 
@@ -32,29 +44,40 @@ def effective_threshold(significance: float, sides: int = 2, trials: int = 1, lo
     one constant boundary. The chance is planned with the raised threshold at the last look, which
     leaves out the claims made earlier: conservative.
     """
-    k = significance
-    if trials > 1:
-        k = threshold_for(local_p(p_value(k, sides), trials), sides)
-    return constant_boundary(k, sides, looks) if looks > 1 else k
+    k = significance if trials == 1 else _raised_for_trials(significance, sides, trials)
+    return k if looks == 1 else constant_boundary(float(k), sides, looks)
 
 
-@lru_cache(maxsize=64)
+def _raised_for_trials(significance: float, sides: int, trials: int) -> float:
+    log_p = float(np.log(sides) + special.log_ndtr(-significance))
+    log_local = np.log(local_p(np.exp(log_p), trials)) if log_p > -600.0 else log_p - np.log(trials)
+    return float(sigma_of_log_tail(log_local - np.log(sides)))
+
+
+@lru_cache(maxsize=256)
 def constant_boundary(significance: float, sides: int, looks: int) -> float:
     """The boundary in sigma, the same at every look, that keeps the false-claim probability of one look.
 
-    Solves crossing(c) = sides × Phi(-k) by the secant rule in ln p (repeated significance tests of
-    Armitage, McPherson & Rowe 1969, J. R. Stat. Soc. A 132, 235; from memory).
+    Solves crossing(c) = sides × Phi(-k) by the secant rule, probabilities written in sigma (repeated
+    significance tests of Armitage, McPherson & Rowe 1969, J. R. Stat. Soc. A 132, 235; from memory).
+    Above 10 sigma the looks count as if independent, which is never too low.
     """
-    wanted = np.log(p_value(significance, sides))
-    low, high = significance, significance + 0.5
-    miss_low = np.log(crossing(low, sides, looks)) - wanted
-    miss_high = np.log(crossing(high, sides, looks)) - wanted
-    for _ in range(30):
-        step = high - miss_high * (high - low) / (miss_high - miss_low)
-        low, miss_low = high, miss_high
-        high, miss_high = step, np.log(crossing(step, sides, looks)) - wanted
-        if abs(miss_high) < 1e-10:
+    alone = float(special.log_ndtr(-significance))
+    if significance > SURE:
+        return float(sigma_of_log_tail(alone - np.log(looks)))
+
+    def worth(boundary: float) -> float:
+        return threshold_for(min(crossing(boundary, sides, looks), sides * (1.0 - 1e-15)), sides)
+
+    low = float(sigma_of_log_tail(alone - np.log(min(looks, 1.0 + 5.0 * np.log(looks)))))
+    at_low = worth(low)
+    high = low + significance - at_low
+    for _ in range(40):
+        at_high = worth(high)
+        if abs(at_high - significance) < 1e-11 or at_high == at_low:
             break
+        step = (significance - at_high) * (high - low) / (at_high - at_low)
+        low, at_low, high = high, at_high, high + step
     return float(high)
 
 
@@ -72,36 +95,38 @@ def crossing(boundary: float, sides: int, looks: int) -> float:
         edge = boundary * np.sqrt(look)
         leaves = special.ndtr(nodes - edge)
         if sides == 2:
-            leaves = leaves + special.ndtr(-nodes - edge)
-        total += _folded(weights * density * leaves, sides)
+            leaves = 2.0 * (leaves + special.ndtr(-nodes - edge))  # the half kept stands for both
+        total += float((weights * density * leaves).sum())
         target, next_weights = _inside(boundary, sides, look)
-        density = _carried(target, nodes, weights * density, sides)
+        density = _carried(target, nodes, weights * density, sides, 9.0 + boundary / np.sqrt(look))
         nodes, weights = target, next_weights
-    return float(total)
+    return total
 
 
-def _folded(terms: Array, sides: int) -> float:
-    return float(terms.sum() * (2.0 if sides == 2 else 1.0))
+def _carried(target: Array, nodes: Array, mass: Array, sides: int, reach: float) -> Array:
+    """The density after one more unit normal step; steps beyond reach are left out.
 
-
-def _carried(target: Array, nodes: Array, mass: Array, sides: int) -> Array:
-    """The density after one more unit normal step; two-sided densities are even and kept on one half."""
-    kernel = np.exp(-0.5 * (target[:, None] - nodes[None, :]) ** 2)
+    Two-sided densities are even and kept on one half.
+    """
     if sides == 2:
-        kernel = kernel + np.exp(-0.5 * (target[:, None] + nodes[None, :]) ** 2)
-    return np.asarray((kernel * mass[None, :]).sum(axis=1) / np.sqrt(2.0 * np.pi))
+        nodes, mass = np.concatenate([-nodes[::-1], nodes]), np.concatenate([mass[::-1], mass])
+    start = np.searchsorted(nodes, target - reach)
+    width = int(np.max(np.searchsorted(nodes, target + reach) - start))
+    near = np.minimum(start, len(nodes) - width)[:, None] + np.arange(width)
+    kernel = np.exp(-0.5 * (target[:, None] - nodes[near]) ** 2)
+    return np.asarray((kernel * mass[near]).sum(axis=1) / np.sqrt(2.0 * np.pi))
 
 
 def _inside(boundary: float, sides: int, look: int) -> tuple[Array, Array]:
-    """Nodes and weights between the boundaries of a look (half of it, or down to -9 sqrt(look))."""
+    """Nodes and weights between the boundaries of a look: the upper half of it, or all that matters."""
     edge = boundary * np.sqrt(look)
-    low = 0.0 if sides == 2 else -9.0 * np.sqrt(look)
+    low = 0.0 if sides == 2 else -LOWEST * np.sqrt(look)
     unit_nodes, unit_weights = _legendre(12 * (2 + int((edge - low) / 8.0)))
     half = (edge - low) / 2.0
     return low + half * (unit_nodes + 1.0), half * unit_weights
 
 
-@lru_cache(maxsize=128)
+@lru_cache(maxsize=256)
 def _legendre(count: int) -> tuple[Array, Array]:
     nodes, weights = np.polynomial.legendre.leggauss(count)
     return np.asarray(nodes), np.asarray(weights)

@@ -15,18 +15,18 @@ FILES = sorted(PACKAGE.rglob("*.py"))
 
 # From the bottom up; a module may import from its own layer's earlier entries and from lower layers.
 NUMBER_HALF = (
-    ("errors", "constants", "keys", "options", "generating_vector"),
+    ("errors", "constants", "keys", "options", "generating_vector", "showing", "suggestions"),
     ("laws", "results"),
     ("tables", "profiles", "thresholds"),
     ("techniques", "centre_bounds", "limits", "systematics", "schedule"),
     ("problem", "averaging", "decision"),
-    ("points", "conditional", "quantiles"),
-    ("realisation", "estimator", "linear", "monte_carlo", "propagation"),
+    ("points", "conditional", "quantiles", "nominal", "summaries"),
+    ("realisation", "estimator", "linear", "monte_carlo", "required", "integration"),
     ("questions",),
 )
 TEXT_LIBRARIES = {"pydantic", "pint"}
 RENDERING = ("output", "plots")
-RENDERING_MAY_IMPORT = {"results", "errors", "output", "plots", "options", "resources"}
+RENDERING_MAY_IMPORT = {"results", "errors", "output", "plots", "options", "resources", "showing", "__version__"}
 
 
 def module_name(path: Path) -> str:

@@ -23,7 +23,7 @@ ee = "0.9 .. 1"
 [scenario.w]
 splitting = { value = "2 Hz ×/ 2", of = "difference" }
 line = { profile = "lorentzian", fwhm = "60(5) kHz" }
-technique = { kind = "scan", snr = "30 ×/ 1.2", points = 100000, span = "2000 FWHM", time = "2 s", free = [] }
+technique = { kind = "scan", snr = "30 ×/ 1.2", points = 10000, span = "200 FWHM", time = "2 s", free = [] }
 samples = { ee_a = "@ee", ee_b = "@ee" }
 
 [scenario.w.systematics]

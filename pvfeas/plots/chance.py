@@ -41,4 +41,4 @@ def _label(one: ChanceCurve, single: bool) -> str:
     if one.ceiling < 5e-4:
         return f"{one.scenario}: never"
     ceiling = f"ceiling {100 * one.ceiling:.3g} %"
-    return ceiling if single else f"{one.scenario}\n({ceiling})"
+    return ceiling if single else f"{one.scenario}, {100 * one.ceiling:.3g} %"

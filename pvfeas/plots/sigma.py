@@ -48,7 +48,8 @@ def _parts(axes: Any, one: SigmaCurve) -> list[tuple[float, str, str]]:
         if max(v / t for v, t in zip(values, one.total, strict=True)) < LEAST_PART:
             continue
         axes.plot(one.wall_time, values, color=colour(place), linestyle=dashes(place), linewidth=1.0, zorder=3)
-        labels.append((values[-1], name.removeprefix("systematics."), colour(place)))
+        if values[-1] > min(one.total) / 4.0:
+            labels.append((values[-1], name.removeprefix("systematics."), colour(place)))
     return labels
 
 

@@ -13,9 +13,9 @@ from pvfeas.options import Options
 from pvfeas.points import Sample, half_width
 from pvfeas.problem import Problem
 from pvfeas.questions.assess import Plan, Progress, assess, chosen, plan, samples
+from pvfeas.questions.tolerance import PROBABILITY
 from pvfeas.required import required_wall_time
 from pvfeas.results import Assessment, Comparison, Difference, Odds
-from pvfeas.questions.tolerance import PROBABILITY
 
 SAME = 1e-9  # relative: two required times closer than this are equal
 

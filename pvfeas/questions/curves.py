@@ -10,9 +10,9 @@ from pvfeas.laws import Array
 from pvfeas.options import Options
 from pvfeas.points import half_width
 from pvfeas.problem import Goal, Problem
+from pvfeas.quantiles import of_values
 from pvfeas.questions.assess import Plan, chosen, plan, samples
 from pvfeas.questions.sections import Case, chance_points, finite, ratio, unit_need
-from pvfeas.quantiles import of_values
 from pvfeas.required import required_wall_time
 from pvfeas.results import ChanceCurve, Curves, SigmaCurve
 from pvfeas.summaries import flattened

@@ -58,7 +58,9 @@ class Ramsey(Technique):
     rate: Array | None = positive("1/s", "molecules per live time of the arm, instead of molecules")
     readout: str = choice("what is counted", "both states", "one state", default="both states")
     readout_noise: Array = quantity("1", "rms noise of the counted excited molecules", lower=0.0, default="0")
-    idle_time: Array = quantity("s", "part of the cycle without interrogation", lower=0.0, default="0 s", example="50 ms")
+    idle_time: Array = quantity(
+        "s", "part of the cycle without interrogation", lower=0.0, default="0 s", example="50 ms"
+    )
 
     @classmethod
     def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
@@ -76,7 +78,7 @@ class Ramsey(Technique):
         """molecules, or rate × (free_time + idle_time)."""
         if self.molecules is not None:
             return self.molecules
-        return np.asarray(self.rate * (self.free_time + self.idle_time))
+        return np.asarray(np.asarray(self.rate) * (self.free_time + self.idle_time))
 
     def centre_variance(self, line: Line) -> Array:
         """Variance of one cycle, Hz^2."""

@@ -102,7 +102,12 @@ class Scan(Technique):
         return line.fwhm
 
     def warnings(self, line: Line) -> tuple[tuple[str, str], ...]:
-        """Points too far apart for the bound to hold wherever they lie."""
+        """Points too far apart for the bound to hold wherever they lie, or too few of them for the fit."""
+        found = []
         if np.any(self.spacing() > COARSE * np.asarray(line.fwhm)):
-            return (("coarse scan", "points lie further apart than half the FWHM: the bound depends on where they lie"),)
-        return ()
+            message = "points lie further apart than half the FWHM: the bound depends on where they lie"
+            found.append(("coarse scan", message))
+        parameters = len(set(self.free)) + 1
+        if np.any(np.asarray(self.points) < parameters):
+            found.append(("too few points", f"a fit of {parameters} parameters needs as many points: none is possible"))
+        return tuple(found)
