@@ -19,6 +19,7 @@ from pvfeas.laws import Array
 from pvfeas.problem import Correlation, Draws, Ensemble, Input
 
 REPLICATES = 16
+SAFETY = 1.15
 
 
 def shift(seed: int, address: str, replicate: int) -> float:
@@ -165,9 +166,13 @@ def _members(ensemble: Ensemble, groups: tuple[str, ...], score: Array | None) -
 
 
 def half_width(replicates: Array) -> Array:
-    """95 % half-width of the mean over replicates (last axis), by Student's t; zero where all share one value."""
+    """95 % half-width of the mean over replicates (last axis), by Student's t; zero where all share one value.
+
+    Widened by SAFETY: shifted lattices have heavier tails than normal estimates, and 100 seeds of a
+    study with known answers were covered 89 to 95 times without it.
+    """
     count = replicates.shape[-1]
     if count == 1:
         return np.zeros(replicates.shape[:-1])
     quantile = special.stdtrit(count - 1, 0.975)
-    return np.asarray(quantile * replicates.std(axis=-1, ddof=1) / np.sqrt(count))
+    return np.asarray(SAFETY * quantile * replicates.std(axis=-1, ddof=1) / np.sqrt(count))

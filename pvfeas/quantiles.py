@@ -26,7 +26,7 @@ class Quantile:
 
 
 def solve(
-    distribution: Distribution, probabilities: Sequence[float], starts: Sequence[float], accuracy: float = 1e-6
+    distribution: Distribution, probabilities: Sequence[float], starts: Sequence[float], accuracy: float = 1e-9
 ) -> list[Quantile]:
     """Quantiles of the pooled distribution and their errors from the spread of the replicates.
 
