@@ -26,7 +26,7 @@ def limiting(case: Case) -> Limiting:
     """
     scene, sample = case.full, case.full.estimator.sample
     averaging = scene.sampled.averaging
-    parts = averaging.parts(np.asarray(case.budget))
+    parts = averaging.parts(averaging.best_time(np.asarray(case.budget)))
     classes = {
         name: sum((part for key, part in parts.items() if key.split(".")[0] == name), np.zeros((1, 1)))
         for name in CLASSES[:3]

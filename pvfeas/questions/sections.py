@@ -268,13 +268,15 @@ def sigmas(case: Case) -> Sigma:
 
     def level(select: Callable[[str], bool]) -> Level:
         def values(scene: Scene) -> Array:
-            parts = scene.sampled.averaging.parts(budget)
+            averaging = scene.sampled.averaging
+            parts = averaging.parts(averaging.best_time(budget))
             return np.sqrt(sum((part for name, part in parts.items() if select(name)), np.zeros((1, 1))))
 
         draws, weights = flattened(case.full.estimator.sample, values(case.full))
         return Level(finite(of_values(draws, weights, [0.5])[0][0]), finite(_number(values(case.nominal))))
 
-    parts = {name: _number(part) for name, part in case.nominal.sampled.averaging.parts(budget).items()}
+    best = case.nominal.sampled.averaging
+    parts = {name: _number(part) for name, part in best.parts(best.best_time(budget)).items()}
     total = sum(parts.values())
     return Sigma(
         at=Moment(case.budget), unit="Hz",
