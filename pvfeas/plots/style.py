@@ -61,10 +61,10 @@ def time_axis(axes: Any, low: float, high: float, label: str) -> None:
 
 
 def spaced(ticks: list[tuple[float, str]], length: float) -> list[tuple[float, str]]:
-    """Ticks that do not touch: at least a ninth of the axis apart."""
+    """Ticks that do not touch: at least a seventh of the axis apart."""
     kept: list[tuple[float, str]] = []
     for at, name in ticks:
-        if not kept or math.log(at / kept[-1][0]) > length / 9.0:
+        if not kept or math.log(at / kept[-1][0]) > length / 7.0:
             kept.append((at, name))
     return kept
 
