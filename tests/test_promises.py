@@ -79,13 +79,13 @@ def test_exit_codes_and_messages(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize("suffix", [".pdf", ".svg", ".png"])
 def test_figures_are_the_same_bytes_each_time(tmp_path: Path, suffix: str) -> None:
-    from pvfeas.output.provenance import provenance
+    from pvfeas.output.provenance import metadata
     from pvfeas.plots.saving import figure_bytes
     from pvfeas.plots.sheet import sheet
     from pvfeas.questions.curves import curves
 
     found = curves(problem_of(load_study(ODDS)), options=Options(tolerance=10.0))
-    told = provenance("assess", "x", "0", 1)
+    told = metadata("x", {"name": "assess", "seed": 1}, "0")
     first, second = (figure_bytes(sheet(found), f"a{suffix}", told) for _ in range(2))
     assert first == second
     if suffix == ".pdf":

@@ -41,12 +41,8 @@ def command(study: str, settings: tuple[str, ...], names: tuple[str, ...], form:
     texts = {
         "json": lambda: to_json(assessment_content(result)),
         "csv": lambda: assessment_csv(result),
-        "text": lambda: assessment_text(result, *(screen() if output == "-" else (0, False))),
+        "text": lambda: assessment_text(result, *screen(output)),
     }
-    if given["figure"] or given["figure_data"]:
-        from pvfeas.questions.curves import curves
-
-        found = curves(problem, names, options)
-        draw_figures(found, "assess", result.sha256, result.seed, given["figure"], given["figure_data"])
+    draw_figures(problem, result, result.question, given)
     emit(texts[kind](), output)
     return code_of([one.chance.value for one in result.scenarios], given["fail_under"])

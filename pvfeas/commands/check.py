@@ -16,5 +16,5 @@ def command(study: str, settings: tuple[str, ...], output: str) -> int:
     from pvfeas.understanding import understood
 
     found = understood(read_study(study, settings))
-    emit(understood_text(found, *(screen() if output == "-" else (0, False))), output)
+    emit(understood_text(found, *screen(output)), output)
     return 0

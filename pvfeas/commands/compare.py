@@ -45,12 +45,8 @@ def command(study: str, settings: tuple[str, ...], names: tuple[str, ...], form:
     texts = {
         "json": lambda: to_json(comparison_content(result)),
         "csv": lambda: assessment_csv(result.assessment),
-        "text": lambda: comparison_text(result, *(screen() if output == "-" else (0, False))),
+        "text": lambda: comparison_text(result, *screen(output)),
     }
-    if given["figure"] or given["figure_data"]:
-        from pvfeas.questions.curves import curves
-
-        found = curves(problem, names, options)
-        draw_figures(found, "compare", result.assessment.sha256, options.seed, given["figure"], given["figure_data"])
+    draw_figures(problem, result.assessment, result.assessment.question, given)
     emit(texts[kind](), output)
     return code_of([one.chance.value for one in result.assessment.scenarios], given["fail_under"])

@@ -6,7 +6,7 @@ import os
 import shutil
 import sys
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeVar
 
@@ -16,7 +16,8 @@ from pvfeas.errors import UsageError
 
 if TYPE_CHECKING:
     from pvfeas.options import Options
-    from pvfeas.results import Curves
+    from pvfeas.problem import Problem
+    from pvfeas.results import Assessment
     from pvfeas.study import Study
 
 F = TypeVar("F", bound=Callable[..., Any])
@@ -68,7 +69,7 @@ def read_study(source: str, settings: tuple[str, ...]) -> Study:
     return load_study(source, pairs)
 
 
-def options_of(given: dict[str, Any]) -> Options:
+def options_of(given: Mapping[str, Any]) -> Options:
     """The options that change numbers."""
     from pvfeas.options import Options
 
@@ -86,18 +87,18 @@ def format_of(form: str | None, output: str) -> str:
 
 def emit(text: str, output: str) -> None:
     """Write text to the output, in ASCII where standard output can do no better."""
-    from pvfeas.output.table import encodable
+    from pvfeas.output.words import encodable
     from pvfeas.output.writing import write_bytes
 
     encoding = (sys.stdout.encoding or "ascii") if output == "-" else "utf-8"
     write_bytes(output, encodable(text, encoding).encode(encoding, "replace"))
 
 
-def screen() -> tuple[int, bool]:
-    """Width (0: unlimited) and whether to use colour, of standard output."""
-    terminal = sys.stdout.isatty()
-    width = shutil.get_terminal_size((80, 24)).columns if terminal else 0
-    return width, terminal and not os.environ.get("NO_COLOR")
+def screen(output: str) -> tuple[int, bool]:
+    """Width of a table and whether to use colour: those of a terminal, else 80 columns without colour."""
+    terminal = output == "-" and sys.stdout.isatty()
+    width = shutil.get_terminal_size((80, 24)).columns if terminal else 80
+    return max(width, 40), terminal and not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
 
 
 class Ticker:
@@ -121,19 +122,24 @@ class Ticker:
             sys.stderr.flush()
 
 
-def draw_figures(curves: Curves, question: str, sha256: str, seed: int, figure: str | None, data: str | None) -> None:
-    """The figure and its numbers, where they were asked for."""
+def draw_figures(problem: Problem, result: Assessment, question: Mapping[str, object], given: Mapping[str, Any]) -> None:
+    """The figure of an answer and its numbers, where they were asked for."""
+    if given["figure"] is None and given["figure_data"] is None:
+        return
     from pvfeas.output.csv import curves_csv
-    from pvfeas.output.provenance import provenance
+    from pvfeas.output.provenance import metadata
     from pvfeas.output.writing import write_bytes
+    from pvfeas.questions.curves import curves
 
-    if figure is not None:
+    found = curves(problem, [one.name for one in result.scenarios], options_of(given))
+    if given["figure"] is not None:
         from pvfeas.plots.saving import figure_bytes
         from pvfeas.plots.sheet import sheet
 
-        write_bytes(figure, figure_bytes(sheet(curves), figure, provenance(question, curves.title, sha256, seed)))
-    if data is not None:
-        write_bytes(data, curves_csv(curves).encode())
+        said = metadata(result.title, question, result.sha256)
+        write_bytes(given["figure"], figure_bytes(sheet(found), given["figure"], said))
+    if given["figure_data"] is not None:
+        write_bytes(given["figure_data"], curves_csv(found, question, result.sha256).encode())
 
 
 def code_of(chances: list[float], fail_under: float | None) -> int:

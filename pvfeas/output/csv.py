@@ -1,74 +1,110 @@
-"""Results as tidy CSV: units in the header, one row a scenario or a point."""
+"""Results as tidy CSV: units in the header, one row a scenario or a point of a curve."""
 
 from __future__ import annotations
 
 import csv
 import io
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
-from pvfeas.results import Assessment, Curves, Quantiles, RequiredTime, ScenarioResult
+from pvfeas.output.json import plain, scenario_content
+from pvfeas.output.provenance import columns
+from pvfeas.results import Assessment, ChanceCurve, Curves, SigmaCurve
 
-NAMES = ("q05", "q16", "q50", "q84", "q95", "nominal")
-
-
-def _row(result: ScenarioResult) -> dict[str, Any]:
-    row: dict[str, Any] = {"scenario": result.name, "technique": result.technique, "status": result.status}
-    for name, found in (
-        ("splitting", result.splitting), ("signal", result.signal), ("required_time", result.required_time),
-        ("required_live_time", result.required_live_time), ("reach", result.reach),
-        ("centre_uncertainty", result.centre_uncertainty), ("sensitivity", result.sensitivity),
-    ):  # fmt: skip
-        row |= _quantiles(name, found)
-    row |= {
-        "reachable": result.required_time.reachable, "in_time": result.required_time.in_time,
-        "within (s)": result.chance.within.value, "chance": result.chance.value, "chance_error": result.chance.error,
-        "chance_ceiling": result.chance.ceiling,
-        "significance_q50": None if result.significance is None else result.significance.q50,
-        "sigma_q50 (Hz)": result.sigma.total.q50,
-        "needed_sigma_q50 (Hz)": None if result.resolution is None else result.resolution.needed.q50,
-        "limit_q50 (Hz)": None if result.limit is None else result.limit.q50,
-        "limiting": result.limiting.name, "reason": result.reason,
-    }  # fmt: skip
-    return row
-
-
-def _quantiles(name: str, found: Quantiles | RequiredTime | None) -> dict[str, Any]:
-    unit = "Hz" if found is None else found.unit
-    return {f"{name}_{one} ({unit})": None if found is None else getattr(found, one) for one in NAMES}
+PURE = ("reachable", "in_time", "shares", "u_ln", "confidence")  # numbers without a unit beside numbers with one
+Row = Mapping[str, Any]
 
 
 def assessment_csv(result: Assessment) -> str:
-    """One row a scenario."""
-    return to_csv([_row(one) for one in result.scenarios])
+    """One row a scenario; columns are the addresses of the JSON, with their units."""
+    rows = [_row(scenario_content(one)) for one in result.scenarios]
+    return to_csv(rows, columns(result.question, result.sha256))
 
 
-def to_csv(rows: Sequence[dict[str, Any]]) -> str:
-    """Rows of equal keys as CSV; an empty cell is what JSON calls null."""
+def _row(content: Mapping[str, Any]) -> dict[str, Any]:
+    rest = {key: value for key, value in content.items() if key != "name"}
+    return {"scenario": content["name"], **dict(_flat(rest, "", ""))}
+
+
+def _flat(content: Mapping[str, Any], path: str, unit: str) -> Iterator[tuple[str, Any]]:
+    """Every value with its address; a table's unit holds for the numbers below it."""
+    unit = str(content.get("unit", unit))
+    for key, value in content.items():
+        address = f"{path}.{key}" if path else key
+        if isinstance(value, Mapping):
+            yield from _flat(value, address, "" if key in PURE else unit)
+        elif key == "unit":
+            continue
+        elif isinstance(value, list):
+            yield from _listed(address, value)
+        else:
+            written = f"{address} ({unit})" if unit not in ("", "1") and _has_unit(key, value) else address
+            yield written, value
+
+
+def _listed(address: str, values: Sequence[Any]) -> Iterator[tuple[str, Any]]:
+    if all(isinstance(one, str) for one in values):
+        yield address, "; ".join(values)
+        return
+    for place, one in enumerate(values, start=1):
+        yield from _flat(one, f"{address}.{place}", "")
+
+
+def _has_unit(key: str, value: Any) -> bool:
+    return key not in PURE and not isinstance(value, str | bool)
+
+
+def curves_csv(curves: Curves, question: Mapping[str, Any], sha256: str) -> str:
+    """The numbers of the figures, one row a point of a curve or a mark."""
+    rows = [row for one in curves.sigma for row in _sigma_rows(one)]
+    rows += [row for one in curves.chance for row in _chance_rows(one)]
+    return to_csv(rows, columns(question, sha256))
+
+
+def _point(scenario: str, curve: str, wall: float | None, value: float | None, unit: str, error: float | None = None) -> Row:
+    return {"scenario": scenario, "curve": curve, "wall_time (s)": wall, "value": value, "unit": unit, "error": error}
+
+
+def _sigma_rows(one: SigmaCurve) -> Iterator[Row]:
+    named = {"sigma": one.total, "sigma q16": one.total_q16, "sigma q84": one.total_q84}
+    for name, values in {**named, **{f"part {key}": part for key, part in one.parts.items()}}.items():
+        for wall, value in zip(one.wall_time, values, strict=True):
+            yield _point(one.scenario, name, wall, value, one.unit)
+    levels = {
+        "floor": one.floor, "needed sigma q16": one.needed_q16, "needed sigma q50": one.needed_q50,
+        "needed sigma q84": one.needed_q84, "needed sigma nominal": one.needed_nominal,
+    }  # fmt: skip
+    for name, level in levels.items():
+        yield _point(one.scenario, name, None, level, one.unit)
+    for name, wall_mark in {"required time, nominal": one.crossing, "first time": one.first, "sample used up": one.last}.items():
+        yield _point(one.scenario, name, wall_mark, None, one.unit)
+
+
+def _chance_rows(one: ChanceCurve) -> Iterator[Row]:
+    for wall, value, error in zip(one.wall_time, one.chance, one.error, strict=True):
+        yield _point(one.scenario, "chance", wall, value, "1", error)
+    yield _point(one.scenario, "chance at budget", one.budget, one.at_budget, "1")
+    yield _point(one.scenario, "ceiling of the chance", None, one.ceiling, "1")
+
+
+def to_csv(rows: Sequence[Row], told: Mapping[str, str] | None = None) -> str:
+    """Rows as CSV, with columns that are alike in every row at the end.
+
+    An empty cell is what JSON calls null, or what a row does not have.
+    """
+    alike = dict(told or {})
+    names = list(dict.fromkeys(key for row in rows for key in row))
     stream = io.StringIO()
-    writer = csv.DictWriter(stream, list(rows[0]), lineterminator="\n")
+    writer = csv.DictWriter(stream, [*names, *alike], lineterminator="\n", restval="")
     writer.writeheader()
-    writer.writerows({key: _cell(value) for key, value in row.items()} for row in rows)
+    writer.writerows({key: _cell(value) for key, value in {**row, **alike}.items()} for row in rows)
     return stream.getvalue()
 
 
 def _cell(value: Any) -> Any:
+    value = plain(value)
     if value is None:
         return ""
+    if isinstance(value, bool):
+        return "true" if value else "false"
     return f"{value:.9g}" if isinstance(value, float) else value
-
-
-def curves_csv(curves: Curves) -> str:
-    """The numbers of the figures, one row a point of a curve."""
-    return to_csv(list(_points(curves)))
-
-
-def _points(curves: Curves) -> Iterable[dict[str, Any]]:
-    for one in curves.sigma:
-        named = {"sigma": one.total, "sigma q16": one.total_q16, "sigma q84": one.total_q84}
-        for name, values in {**named, **{f"part {key}": part for key, part in one.parts.items()}}.items():
-            for wall, value in zip(one.wall_time, values, strict=True):
-                yield {"scenario": one.scenario, "curve": name, "wall_time (s)": wall, "value": value, "unit": one.unit}
-    for chance in curves.chance:
-        for wall, value in zip(chance.wall_time, chance.chance, strict=True):
-            yield {"scenario": chance.scenario, "curve": "chance", "wall_time (s)": wall, "value": value, "unit": "1"}

@@ -1,170 +1,164 @@
-"""Results as tables for people: whole when piped, plain ASCII where the stream cannot do better."""
+"""Results as text for people: verdicts, tables in 80 columns, the decision contract, doubts."""
 
 from __future__ import annotations
 
-import io
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 
-from pvfeas.output.words import CAUTION, share, verdict
-from pvfeas.results import Assessment, Comparison, Level, Quantiles, RequiredTime, ScenarioResult, Understood
-from pvfeas.showing import digits, time_text, value_text
+from pvfeas.output.grid import fits, grid
+from pvfeas.output.provenance import line
+from pvfeas.output.rows import table_rows
+from pvfeas.output.words import CAUTION, asked, cleaned, error_text, share, short, verdict, wrapped
+from pvfeas.results import Assessment, Comparison, Contract, Difference, Odds, Understood, Warned
+from pvfeas.showing import digits
 
-ASCII = str.maketrans({"σ": "s", "√": "sqrt ", "∞": "inf", "≥": ">=", "≤": "<=", "–": "-", "×": "x", "±": "+-", "µ": "u", "…": "..."})
-Row = tuple[str, Callable[[ScenarioResult], str]]
-
-
-def encodable(text: str, encoding: str) -> str:
-    """The text, in ASCII where the encoding cannot carry it."""
-    try:
-        text.encode(encoding)
-    except (UnicodeEncodeError, LookupError):
-        return text.translate(ASCII).encode("ascii", "replace").decode()
-    return text
+WIDTH = 80
+MOST = 100  # columns of running text, however wide the terminal
 
 
-def assessment_text(result: Assessment, width: int = 0, colour: bool = False) -> str:
-    """Verdicts, the numbers, the contract, what to doubt. width 0: as wide as it needs to be."""
-    parts = [result.title] if result.title else []
-    parts += [verdict(one) for one in result.scenarios]
-    parts.append(grid(["", *(one.name for one in result.scenarios)], rows_of(result.scenarios), width, colour))
-    parts.append(contract_text(result))
-    parts += [f"warning ({one.code}) {one.address}: {one.message}" for one in result.warnings]
-    if not result.tolerance_met:
-        parts.append("warning (tolerance): not every number met its tolerance; allow more with --maximum-points")
-    parts.append(CAUTION)
-    return "\n\n".join(part for part in parts if part) + "\n"
+def assessment_text(result: Assessment, width: int = WIDTH, colour: bool = False) -> str:
+    """Verdicts, the numbers, the contract, what to doubt."""
+    return _joined([*_body(result, width, colour), *_end(result, width)])
 
 
-def rows_of(scenarios: Sequence[ScenarioResult]) -> list[list[str]]:
-    """The rows of the big table; a row that says nothing for any scenario is left out."""
-    rows = [[name, *(show(one) for one in scenarios)] for name, show in ROWS]
-    return [row for row in rows if any(cell not in ("", "-") for cell in row[1:])]
-
-
-def _spread(found: Quantiles | None) -> str:
-    if found is None:
-        return "-"
-    if found.q16 == found.q84:
-        return value_text(found.q50, found.unit)
-    return f"{value_text(found.q50, found.unit)} ({value_text(found.q16, found.unit)} – {value_text(found.q84, found.unit)})"
-
-
-def _time(found: RequiredTime, low: str, high: str) -> str:
-    return f"{time_text(getattr(found, low))} – {time_text(getattr(found, high))}"
-
-
-def _level(level: Level | None, unit: str = "Hz") -> str:
-    return "-" if level is None else value_text(level.q50, unit)
-
-
-def _fraction(level: Level | None) -> str:
-    if level is None or not level.q50:
-        return "-"
-    return f"{level.q50:.2g}, 1 part in {digits(1.0 / level.q50, 2)}"
-
-
-def _calculations(found: ScenarioResult) -> str:
-    per = found.chance.per_calculation
-    return "-" if not per else f"{share(min(per.values()))} – {share(max(per.values()))}"
-
-
-def _shares(found: ScenarioResult) -> str:
-    kept = sorted(found.sigma.shares.items(), key=lambda item: -item[1])
-    return ", ".join(f"{name.removeprefix('systematics.')} {100 * part:.0f} %" for name, part in kept if part >= 0.005)
-
-
-ROWS: tuple[Row, ...] = (
-    ("technique", lambda one: one.technique),
-    ("splitting, true (16–84 %)", lambda one: _spread(one.splitting)),
-    ("splitting, seen (16–84 %)", lambda one: _spread(one.signal)),
-    ("chance within budget", lambda one: f"{share(one.chance.value)} within {time_text(one.chance.within.value)}"),
-    ("  range over calculations", _calculations),
-    ("  for unlimited time", lambda one: share(one.chance.ceiling)),
-    ("required time, median", lambda one: time_text(one.required_time.q50)),
-    ("  16–84 %", lambda one: _time(one.required_time, "q16", "q84")),
-    ("  5–95 %", lambda one: _time(one.required_time, "q05", "q95")),
-    ("  inputs at their medians", lambda one: time_text(one.required_time.nominal)),
-    ("  live time, median", lambda one: time_text(one.required_live_time.q50)),
-    ("  reachable ever / in time", lambda one: f"{share(one.required_time.reachable)} / {share(one.required_time.in_time)}"),
-    ("significance at budget", lambda one: "-" if one.significance is None or one.significance.q50 is None else f"{digits(one.significance.q50)} sigma"),
-    ("  surviving doubt of sizes", lambda one: "-" if one.significance is None or one.significance.surviving is None else f"{digits(one.significance.surviving)} sigma"),
-    ("sigma at budget", lambda one: _level(one.sigma.total, one.sigma.unit)),
-    ("  statistical", lambda one: _level(one.sigma.statistical, one.sigma.unit)),
-    ("  systematic", lambda one: _level(one.sigma.systematic, one.sigma.unit)),
-    ("  parts of sigma^2", _shares),
-    ("sigma needed, splitting", lambda one: "-" if one.resolution is None else _level(one.resolution.needed)),
-    ("  of one line centre", lambda one: "-" if one.resolution is None else _level(one.resolution.needed_centre)),
-    ("  of the width", lambda one: "-" if one.resolution is None else _fraction(one.resolution.of_fwhm)),
-    ("  of the frequency", lambda one: "-" if one.resolution is None else _fraction(one.resolution.of_frequency)),
-    ("line centre, one cycle", lambda one: _spread(one.centre_uncertainty)),
-    ("sensitivity", lambda one: _spread(one.sensitivity)),
-    ("reach at budget (16–84 %)", lambda one: _spread(one.reach)),
-    ("limit if no splitting", lambda one: "-" if one.limit is None else f"{value_text(one.limit.q50, 'Hz')} ({100 * one.limit.confidence:.4g} %, {one.limit.construction})"),
-    ("limited by", lambda one: one.limiting.name),
-)
-
-
-def contract_text(result: Assessment) -> str:
-    """The decision contract in sentences; what differs between scenarios is said for each."""
-    one = result.scenarios[0].contract
-    said = [f"Decision: null hypothesis: {one.null}"]
-    if one.threshold is not None and one.p is not None:
-        raised = "" if one.threshold_used == one.threshold else f", raised to {digits(one.threshold_used or 0.0, 4)} sigma"
-        said.append(f"threshold {digits(one.threshold)} sigma{raised} (p = {one.p:.2g}, {one.sides}-sided, trials {one.trials}, looks {one.looks})")
-    if one.confidence is not None:
-        said.append(f"confidence {100 * one.confidence:.4g} % by {one.construction}, {one.sides}-sided")
-    if one.power is not None:
-        said.append(f"goal met where the chance is at least {share(one.power)}")
-    said.append(f"drawn: {one.drawn}; unknown after: {one.unknown_after}")
-    without = [each.name for each in result.scenarios if not each.contract.floor_declared]
-    said.append(f"no floor declared for {', '.join(without)}" if without else "floors declared")
-    return "; ".join(said) + "."
-
-
-def comparison_text(result: Comparison, width: int = 0, colour: bool = False) -> str:
+def comparison_text(result: Comparison, width: int = WIDTH, colour: bool = False) -> str:
     """The assessment side by side, what was written differently, and the odds."""
+    parts = _body(result.assessment, width, colour)
     names = [one.name for one in result.assessment.scenarios]
-    parts = [assessment_text(result.assessment, width, colour).removesuffix(CAUTION + "\n").rstrip()]
     if result.differences:
-        rows = [[one.key, *one.texts] for one in result.differences]
-        parts.append("What differs:\n" + grid(["key", *names], rows, width, colour))
+        parts.append(f"What differs:\n\n{_differences(names, result.differences, width, colour)}")
+    parts.append(_odds(result.odds, width, colour))
+    return _joined([*parts, *_end(result.assessment, width)])
+
+
+def understood_text(found: Understood, width: int = WIDTH, colour: bool = False) -> str:
+    """What check understood: each input with its law, status and source, and the lists of what to doubt."""
+    text = min(width, MOST)
+    parts = [wrapped(found.title, text)] if found.title else []
+    for one in found.rows:
+        said = "; ".join(each for each in (one.law, one.status, f"source: {one.source}" if one.source else "") if each)
+        parts.append(f"{one.address} = {one.text}\n    {wrapped(said, max(text - 4, 20), '    ')}")
+    rows = "\n".join(parts[1:] if found.title else parts)
+    parts = [*parts[: 1 if found.title else 0], rows]
+    for name, listed in (("exact", found.exact), ("assumed or extrapolated", found.assumed), ("without source", found.without_source)):
+        parts.append(wrapped(f"{name} ({len(listed)}): {', '.join(listed) if listed else 'none'}", text, "  "))
+    parts += warning_lines(found.warnings, text)
+    return _joined(parts)
+
+
+def warning_lines(warnings: Sequence[Warned], width: int) -> list[str]:
+    """Doubts, one a paragraph; one that holds for several addresses is said once."""
+    places: dict[tuple[str, str], list[str]] = {}
+    for one in warnings:
+        places.setdefault((one.code, one.message), []).append(one.address)
+    return [
+        wrapped(f"warning ({code}): {', '.join(filter(None, where))}: {said}" if any(where) else f"warning ({code}): {said}", width, "  ")
+        for (code, said), where in places.items()
+    ]
+
+
+def doubts(result: Assessment, width: int) -> list[str]:
+    """The warnings of an assessment, and numbers that did not meet their tolerance."""
+    found = warning_lines(result.warnings, width)
+    if not result.tolerance_met:
+        worst = max(one.chance.error for one in result.scenarios)
+        found.append(
+            wrapped(
+                f"warning (tolerance): not every number met its tolerance with {result.points} points (chances are known "
+                f"to {error_text(worst)}); allow more with --maximum-points",
+                width, "  ",
+            )  # fmt: skip
+        )
+    return found
+
+
+def _joined(parts: Sequence[str]) -> str:
+    return cleaned_but_colour("\n\n".join(part for part in parts if part)) + "\n"
+
+
+def cleaned_but_colour(text: str) -> str:
+    """Without control characters other than the codes of our own bold headers."""
+    return "\x1b[1m".join("\x1b[0m".join(cleaned(piece) for piece in part.split("\x1b[0m")) for part in text.split("\x1b[1m"))
+
+
+def _body(result: Assessment, width: int, colour: bool) -> list[str]:
+    text = min(width, MOST)
+    parts = [wrapped(result.title, text)] if result.title else []
+    parts += [wrapped(verdict(one), text, "  ") for one in result.scenarios]
+    names = [one.name for one in result.scenarios]
+    parts.append(grid(["", *names], table_rows(result.scenarios), width, colour))
+    return parts
+
+
+def _end(result: Assessment, width: int) -> list[str]:
+    text = min(width, MOST)
+    return [
+        *(wrapped(said, text, "  ") for said in contracts(result)),
+        *doubts(result, text),
+        wrapped(line(result.question, result.points, result.sha256), text, "  "),
+        wrapped(CAUTION, text),
+    ]
+
+
+def contracts(result: Assessment) -> list[str]:
+    """The decision contract in sentences; once for all scenarios that share it."""
+    shared: dict[str, list[str]] = {}
+    for one in result.scenarios:
+        shared.setdefault(contract_text(one.contract), []).append(one.name)
+    if len(shared) == 1:
+        said = [f"Decision: {next(iter(shared))}."]
+    else:
+        said = [f"Decision ({', '.join(names)}): {text}." for text, names in shared.items()]
+    return [f"{' '.join(said)} {_declared(result)}"] if len(said) == 1 else [*said, _declared(result)]
+
+
+def contract_text(one: Contract) -> str:
+    """One decision contract."""
+    said = [f"null hypothesis: {one.null}"]
+    if one.threshold is not None and one.p is not None:
+        raised = ""
+        if one.threshold_used is not None and one.threshold_used != one.threshold:
+            raised = f", raised to {digits(one.threshold_used, 4)} sigma for trials and looks"
+        said.append(f"threshold {one.threshold:.6g} sigma (p = {short(f'{one.p:.2g}')}){raised}")
+    if one.confidence is not None:
+        said.append(f"confidence {asked(one.confidence)}, limit by {one.construction}")
+    said.append(f"sides {one.sides}, trials {one.trials}, looks {one.looks}")
+    if one.power is not None:
+        said.append(f"goal met where the chance is at least {asked(one.power)}")
+    return "; ".join([*said, f"drawn: {one.drawn}", f"unknown after: {one.unknown_after}"])
+
+
+def _declared(result: Assessment) -> str:
+    floor = [one.name for one in result.scenarios if not one.contract.floor_declared]
+    schedule = [one.name for one in result.scenarios if not one.contract.schedule_declared]
+    first = f"No floor declared for {', '.join(floor)}: sigma falls without end there" if floor else "Floors declared"
+    second = f"; no schedule declared for {', '.join(schedule)}: 24 h a day, 7 d a week" if schedule else ""
+    return f"{first}{second}."
+
+
+def _differences(names: Sequence[str], found: Sequence[Difference], width: int, colour: bool) -> str:
+    header, rows = ["", *names], [[one.key, *one.texts] for one in found]
+    if fits(header, rows, width):
+        return grid(header, rows, width, colour)
+    longest = max(len(name) for name in names)
+    listed = []
+    for one in found:
+        listed.append(one.key)
+        for name, text in zip(names, one.texts, strict=True):
+            listed.append(wrapped(f"  {name.ljust(longest)}  {text}", min(width, MOST), " " * (longest + 4)))
+    return "\n".join(listed)
+
+
+def _odds(odds: Sequence[Odds], width: int, colour: bool) -> str:
     rows = [
         [
             f"{one.first} : {one.second}", share(one.first_sooner), share(one.second_sooner), share(one.neither),
-            "-" if one.nominal_ratio is None else f"{digits(one.nominal_ratio)}",
+            error_text(one.error), "-" if one.nominal_ratio is None else short(digits(one.nominal_ratio)),
         ]
-        for one in result.odds
+        for one in odds
     ]  # fmt: skip
-    header = ["pair", "first sooner", "second sooner", "neither ever", "time ratio, nominal"]
-    parts.append("Odds, drawn together (time ratio: second over first):\n" + grid(header, rows, width, colour))
-    return "\n\n".join([*parts, CAUTION]) + "\n"
-
-
-def understood_text(found: Understood, width: int = 0, colour: bool = False) -> str:
-    """What check understood."""
-    rows = [[one.address, one.text, one.law, one.status or "-", one.source or "-"] for one in found.rows]
-    parts = [found.title] if found.title else []
-    parts.append(grid(["input", "as written", "understood", "status", "source"], rows, width, colour))
-    for name, listed in (("exact", found.exact), ("assumed or extrapolated", found.assumed), ("without source", found.without_source)):
-        parts.append(f"{name}: {', '.join(listed) if listed else 'none'}")
-    parts += [f"warning ({one.code}) {one.address}: {one.message}" for one in found.warnings]
-    return "\n\n".join(parts) + "\n"
-
-
-def grid(header: Sequence[str], rows: Sequence[Sequence[str]], width: int, colour: bool) -> str:
-    """A table whose columns line up; no cell is ever cut."""
-    from rich import box
-    from rich.console import Console
-    from rich.table import Table
-
-    table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, header_style="bold" if colour else "")
-    for place, name in enumerate(header):
-        table.add_column(name, overflow="fold", no_wrap=width == 0 or place == 0)
-    for row in rows:
-        table.add_row(*(str(cell).replace("[", "\\[") for cell in row))
-    stream = io.StringIO()
-    console = Console(
-        file=stream, width=width or 100_000, force_terminal=colour, no_color=not colour, highlight=False, legacy_windows=False
-    )
-    console.print(table)
-    return "\n".join(line.rstrip() for line in stream.getvalue().splitlines())
+    header = ["pair", "first sooner", "second sooner", "neither", "error", "time ratio"]
+    said = wrapped(
+        "Odds of the smaller required time, drawn together (neither: both unreachable; time ratio: second over first, "
+        "inputs at their medians):", min(width, MOST),
+    )  # fmt: skip
+    return f"{said}\n\n{grid(header, rows, width, colour)}"

@@ -1,14 +1,57 @@
-"""Sentences about results."""
+"""Numbers and sentences as the tables show them."""
 
 from __future__ import annotations
 
-from pvfeas.results import ScenarioResult
-from pvfeas.showing import time_text
+import math
+import re
+import textwrap
+import unicodedata
+
+from pvfeas.results import RequiredTime, ScenarioResult
+from pvfeas.showing import digits, time_text, value_text
 
 CAUTION = (
     "A planning estimate, not a safety review: lasers, high voltage, cryogens and toxic heavy-metal compounds are "
     "for local rules and qualified people to decide."
 )
+ASCII = {
+    "σ": "sigma", "√": "sqrt ", "∞": "inf", "≥": ">=", "≤": "<=", "–": "-", "—": "-", "×": "x", "±": "+/-", "µ": "u", "μ": "u",
+    "…": "...", "─": "-", "²": "^2", "°": "deg", "−": "-", "’": "'", "‘": "'", "“": '"', "”": '"',
+}  # fmt: skip
+
+
+def encodable(text: str, encoding: str) -> str:
+    """The text with what the encoding cannot carry written in ASCII."""
+    found = {sign: spelt for sign in set(text) if (spelt := _spelt(sign, encoding)) != sign}
+    return text.translate(str.maketrans(found))
+
+
+def _spelt(sign: str, encoding: str) -> str:
+    if sign.isascii():
+        return sign
+    try:
+        sign.encode(encoding)
+    except (UnicodeEncodeError, LookupError):
+        plain = unicodedata.normalize("NFKD", sign).encode("ascii", "ignore").decode()
+        return ASCII.get(sign) or plain or "?"
+    return sign
+
+
+def cleaned(text: str) -> str:
+    """The text without control characters, which could steer a terminal."""
+    return "".join(sign if sign == "\n" or unicodedata.category(sign) not in ("Cc", "Cf", "Cs") else "?" for sign in text)
+
+
+def wrapped(text: str, width: int, hanging: str = "") -> str:
+    """A paragraph in lines of at most width, words kept whole."""
+    return textwrap.fill(
+        " ".join(text.split()), width, subsequent_indent=hanging, break_long_words=False, break_on_hyphens=False
+    )
+
+
+def short(text: str) -> str:
+    """1.2e+14 as 1.2e14, 5.7e-07 as 5.7e-7."""
+    return re.sub(r"e([+-])0*(\d)", lambda m: f"e{'-' if m[1] == '-' else ''}{m[2]}", text)
 
 
 def share(value: float) -> str:
@@ -22,15 +65,55 @@ def share(value: float) -> str:
     return f"{100 * value:.1f} %"
 
 
+def asked(value: float) -> str:
+    """A probability that was asked for, as short as it was written."""
+    return f"{100 * value:.6g} %"
+
+
+def exact_time(seconds: float) -> str:
+    """A time that was written in the study: no digits that say nothing."""
+    number, unit = time_text(seconds).split(" ", 1)
+    return f"{number.rstrip('0').rstrip('.') if '.' in number else number} {unit}"
+
+
+def range_text(low: float | None, high: float | None, unit: str) -> str:
+    """From low to high, with the unit once where both have the same; a time that never comes is "never"."""
+    if low is None and high is None:
+        return "never" if unit == "s" else "-"
+    if unit == "s" or low is None or high is None:
+        first, second = value_text(low, unit) if unit != "s" else time_text(low), time_text(high) if unit == "s" else value_text(high, unit)
+        number, _, measure = first.partition(" ")
+        return f"{number} – {second}" if measure and second.endswith(f" {measure}") else f"{first} – {second}"
+    largest = max(abs(low), abs(high))
+    number, _, measure = value_text(largest, unit).partition(" ")
+    scale = 10.0 ** round(math.log10(largest / float(number))) if largest > 0 else 1.0
+    return short(f"{digits(low / scale)} – {digits(high / scale)} {measure}".rstrip())
+
+
+def error_text(error: float | None, value: float | None = None) -> str:
+    """A numerical error in per cent, rounded up to one digit; relative to value where that is given."""
+    if error is None or value == 0.0:
+        return "-"
+    percent = 100.0 * error / (1.0 if value is None else abs(value))
+    if percent == 0.0:
+        return "0 %"
+    size = 10.0 ** math.floor(math.log10(percent))
+    return f"{math.ceil(percent / size - 1e-9) * size:.1g} %" if percent >= 1e-4 else "< 0.0001 %"
+
+
 def verdict(one: ScenarioResult) -> str:
-    """The answer in one or two sentences."""
+    """The answer in a few sentences."""
     chance = one.chance
-    goal = "" if chance.goal_met is None else "; goal met" if chance.goal_met else f"; goal of {share(one.contract.power or 0.0)} not met"
-    said = f"{one.name}: chance {share(chance.value)} within {time_text(chance.within.value)}{goal}."
-    times = one.required_time
+    goal = ""
+    if chance.goal_met is not None and one.contract.power is not None:
+        goal = f" (goal {asked(one.contract.power)}: {'met' if chance.goal_met else 'not met'})"
+    said = f"{one.name}: chance {share(chance.value)} within {exact_time(chance.within.value)}{goal}."
+    return f"{said} {_time_sentence(one.required_time)} {one.reason[:1].upper()}{one.reason[1:].rstrip('.')}."
+
+
+def _time_sentence(times: RequiredTime) -> str:
+    if times.q05 is None and times.reachable == 0.0:
+        return "Required time: never, in no draw."
     if times.q50 is None:
-        said += f" Required time: never in {share(1.0 - times.reachable)} of the draws."
-    else:
-        late = "never" if times.q95 is None else time_text(times.q95)
-        said += f" Required time: median {time_text(times.q50)}, 5–95 % {time_text(times.q05)} – {late}."
-    return f"{said} {one.reason[:1].upper()}{one.reason[1:]}."
+        return f"Required time: never in {share(1.0 - times.reachable)} of the draws."
+    return f"Required time: median {time_text(times.q50)}, 5–95 %: {range_text(times.q05, times.q95, 's')}."

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from itertools import combinations
 
 import numpy as np
@@ -35,7 +36,8 @@ def compare(
     options = options or Options()
     if len(chosen(problem, names)) < 2:
         raise UsageError("compare needs at least two scenarios; use assess for one")
-    assessment: Assessment = assess(problem, options, names, progress)
+    answer: Assessment = assess(problem, options, names, progress)
+    assessment = replace(answer, question={**answer.question, "name": "compare"})
     return Comparison(assessment, differences, odds(problem, names, options))
 
 
