@@ -9,8 +9,9 @@ score. NoPivot: nothing is left to integrate.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Protocol
 
 import numpy as np
@@ -20,7 +21,8 @@ from pvfeas.laws import Array, Law
 
 Interval = tuple[Array, Array]  # open (lower, upper) in Hz, ends may be infinite
 
-NODES: Array = np.arange(-6.5, 6.5001, 0.25)
+NODES: Array = np.arange(-6.5, 6.5001, 0.5)
+AROUND: Array = np.arange(-2, 4)[:, None]  # the neighbours of an interval between nodes
 
 
 class Pivot(Protocol):
@@ -57,6 +59,17 @@ class LawPivot:
     location: Array | None = None
     width: float = 1.0
 
+    def only(self, axis: int, member: int) -> LawPivot:
+        """The same with one member of the ensemble group on that axis alone."""
+
+        def kept(values: Array) -> Array:
+            return np.take(values, [member], axis) if values.ndim >= -axis and values.shape[axis] > 1 else values
+
+        location = None if self.location is None else kept(self.location)
+        if axis != self.axis:
+            return LawPivot(kept(self.factor), self.laws, self.axis, location, self.width)
+        return LawPivot(kept(self.factor), (self.laws[member],), 0, location, self.width)
+
     def probability(self, intervals: Sequence[Interval]) -> Array:
         """Sum of the law's probabilities of the intervals divided by the factor."""
         total: Array = np.zeros(())
@@ -64,8 +77,17 @@ class LawPivot:
             total = total + self._one(lower, upper)
         return total
 
+    @cached_property
+    def _upright(self) -> bool:
+        """Whether the signal grows with x everywhere."""
+        return bool(np.all(self.factor > 0))
+
     def _one(self, lower: Array, upper: Array) -> Array:
         factor = self.factor
+        if self._upright:
+            if self.laws[0].lower >= 0.0 and np.all(np.asarray(upper) <= 0.0) and len(self.laws) == 1:
+                return np.zeros(np.broadcast_shapes(np.shape(upper), factor.shape))
+            return self._between(_divided(lower, factor), _divided(upper, factor))
         with np.errstate(divide="ignore", invalid="ignore"):
             low, high = lower / factor, upper / factor
         silent = np.asarray(np.where((lower < 0) & (upper > 0), 1.0, 0.0))
@@ -104,83 +126,117 @@ class LawPivot:
         return np.asarray(special.ndtr(-shifted if above else shifted))
 
 
+def _divided(end: Array, factor: Array) -> Array:
+    """The end over positive factors; one infinity for all stays one."""
+    return end if np.size(end) == 1 and np.all(np.isinf(end)) else np.asarray(end / factor)
+
+
 @dataclass(frozen=True)
 class NodePivot:
-    """The signal and the intervals are given at NODES of the pivot's score, along one axis.
-
-    axis counts from the end and is that of the nodes; scale makes the margin smooth (a sigma).
-    """
+    """The signal and the intervals are given at NODES of the pivot's score, along one axis, counted from the end."""
 
     signal: Array
-    scale: Array
     axis: int
 
     def probability(self, intervals: Sequence[Interval]) -> Array:
-        """Normal probability of the scores at which the margin is positive; the node axis is gone."""
-        best: Array | None = None
+        """Normal probability of the scores at which the signal lies in an interval; the node axis is gone."""
+        inside: Array = np.zeros((), dtype=bool)
         for lower, upper in intervals:
-            with np.errstate(invalid="ignore", divide="ignore"):
-                margin = np.minimum(self.signal - lower, upper - self.signal) / self.scale
-                margin = np.clip(np.where(np.isnan(margin), -50.0, margin), -50.0, 50.0)
-            best = margin if best is None else np.maximum(best, margin)
-        assert best is not None
-        moved = np.moveaxis(np.asarray(best), self.axis, 0)
-        if moved.shape[0] == 1:  # the pivot makes no difference here
-            return np.asarray(moved[0] > 0, dtype=float)
-        return positive_probability(moved)
+            inside = inside | ((self.signal > lower) & (self.signal < upper))
+
+        def margin(at: Index) -> Array:
+            signal = _at(self.signal, inside.shape, at)
+            ends = [(_at(lower, inside.shape, at), _at(upper, inside.shape, at)) for lower, upper in intervals]
+            return np.max([np.minimum(excess(signal, low), excess(high, signal)) for low, high in ends], axis=0)
+
+        return along_nodes(inside, margin, self.axis)
 
 
-def positive_probability(margin: Array) -> Array:
-    """P(margin > 0) for a standard normal score, from margins at NODES along the first axis.
+@dataclass(frozen=True)
+class NodeValues:
+    """A quantity that cannot be negative, infinity allowed, at NODES of one input's score along one axis."""
 
-    Crossings by cubic Hermite interpolation (Catmull-Rom slopes) of the margin between nodes.
+    values: Array
+    axis: int
+
+    def up_to(self, value: Array) -> Array:
+        """P(quantity <= value) at every point; value has an axis of length 1 where the nodes are, which goes."""
+        inside = np.asarray(self.values < value)
+
+        def margin(at: Index) -> Array:
+            return excess(_at(value, inside.shape, at), _at(self.values, inside.shape, at))
+
+        return along_nodes(inside, margin, self.axis)
+
+
+Index = tuple[Array, ...]
+
+
+def _at(values: Array, shape: tuple[int, ...], at: Index) -> Array:
+    return np.asarray(np.broadcast_to(values, shape)[at])
+
+
+def excess(first: Array, second: Array) -> Array:
+    """(first - second)/(|first| + |second|): the sign of the difference as a smooth number in [-1, 1].
+
+    For positive numbers it is tanh of half the difference of their logarithms. Infinities give 1 or -1,
+    two equal ones -1.
     """
-    sign = margin > 0
-    total = sign[0].astype(float)
-    where = np.nonzero(sign[1:] != sign[:-1])
-    if not where[0].size:
+    with np.errstate(invalid="ignore", divide="ignore"):
+        ratio = (first - second) / (np.abs(first) + np.abs(second))
+    return np.asarray(np.where(np.isnan(ratio), np.where(first > second, 1.0, -1.0), ratio))
+
+
+def along_nodes(inside: Array, margin: Callable[[Index], Array], axis: int) -> Array:
+    """Probability of the scores for which something is inside, known at NODES along one axis, which goes.
+
+    margin: how far inside, at any index, positive where inside. Between two nodes of different kind
+    its root is found by cubic Hermite interpolation, slopes from five-point differences where there
+    are five points, else from three or two.
+    """
+    axis += inside.ndim
+    if inside.shape[axis] == 1:  # the pivot makes no difference here
+        return np.asarray(np.take(inside, 0, axis), dtype=float)
+    front = np.moveaxis(inside, axis, 0)
+    total = front[0].astype(float)
+    found = np.nonzero(front[1:] != front[:-1])
+    if not found[0].size:
         return total
-    k, rest = where[0], where[1:]
-    last = len(NODES) - 1
-    before, here, there, after = (margin[(np.clip(k + d, 0, last), *rest)] for d in (-1, 0, 1, 2))
-    left, right = (there - before) / 2.0, (after - here) / 2.0
-    left = np.where(k == 0, there - here, left)
-    right = np.where(k == last - 1, there - here, right)
-    fraction = _hermite_root(here, there, left, right)
-    crossing = NODES[k] + fraction * (NODES[1] - NODES[0])
-    upward = np.where(there > 0, 1.0, -1.0)
-    np.add.at(total, rest, upward * special.ndtr(-crossing))
+    k, rest = found[0], found[1:]
+
+    node = np.clip(k + AROUND, 0, len(NODES) - 1)
+    same = tuple(np.broadcast_to(one, node.shape) for one in rest)
+    far_left, left, here, there, right, far_right = margin((*same[:axis], node, *same[axis:]))
+    slope_here = _slope(k, far_left, left, there, right)
+    slope_there = _slope(k + 1, left, here, right, far_right)
+    crossing = NODES[k] + _hermite_root(here, there, slope_here, slope_there) * (NODES[1] - NODES[0])
+    np.add.at(total, rest, np.where(front[(k + 1, *rest)], 1.0, -1.0) * special.ndtr(-crossing))
     return np.asarray(np.clip(total, 0.0, 1.0))
 
 
+def _slope(k: Array, far_left: Array, left: Array, right: Array, far_right: Array) -> Array:
+    """Slope per node at node k from its neighbours; an end of NODES is its own neighbour."""
+    last = len(NODES) - 1
+    three = (right - left) / np.where((k == 0) | (k == last), 1.0, 2.0)
+    five = (8.0 * (right - left) - (far_right - far_left)) / 12.0
+    return np.asarray(np.where((k > 1) & (k < last - 1), five, three))
+
+
 def _hermite_root(here: Array, there: Array, left: Array, right: Array) -> Array:
-    """Root in (0, 1) of the cubic with these end values and slopes; regula falsi from the chord."""
+    """Root in (0, 1) of the cubic with these end values and slopes: Newton from the chord, kept inside a bracket."""
     low, high = np.zeros_like(here), np.ones_like(here)
     rising = there > here
+    square, cube = 3.0 * (there - here) - 2.0 * left - right, 2.0 * (here - there) + left + right
     fraction = here / (here - there)
     for _ in range(6):
-        value, slope = _hermite(fraction, here, there, left, right)
+        value = here + fraction * (left + fraction * (square + fraction * cube))
+        slope = left + fraction * (2.0 * square + 3.0 * fraction * cube)
         above = (value > 0) == rising
         low, high = np.where(above, low, fraction), np.where(above, fraction, high)
         with np.errstate(divide="ignore", invalid="ignore"):
             newton = fraction - value / slope
-        inside = (newton > low) & (newton < high)
-        fraction = np.where(inside, newton, (low + high) / 2.0)
+        inside = (newton >= low) & (newton <= high)  # at the root it is one of them
+        fraction, before = np.where(inside, newton, (low + high) / 2.0), fraction
+        if np.all(np.abs(fraction - before) < 1e-12):
+            break
     return np.asarray(fraction)
-
-
-def _hermite(x: Array, here: Array, there: Array, left: Array, right: Array) -> tuple[Array, Array]:
-    square, cube = x * x, x * x * x
-    value = (
-        here * (2 * cube - 3 * square + 1)
-        + left * (cube - 2 * square + x)
-        + there * (3 * square - 2 * cube)
-        + right * (cube - square)
-    )
-    slope = (
-        6 * here * (square - x)
-        + left * (3 * square - 4 * x + 1)
-        + 6 * there * (x - square)
-        + right * (3 * square - 2 * x)
-    )
-    return value, slope

@@ -7,16 +7,19 @@ number comes with its error.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, is_dataclass, replace
+from typing import Any
 
 import numpy as np
+from scipy import special
 
-from pvfeas.conditional import Interval, Pivot
+from pvfeas.conditional import Interval, LawPivot, Pivot
 from pvfeas.decision import Rule, needed_signal, signal_intervals
 from pvfeas.laws import Array
 from pvfeas.points import Sample
 from pvfeas.realisation import Realisation
 
+STRATA = 8  # of the noise: errors of a chance become 2 to 6 times smaller (measured on the example studies)
 Select = Callable[[Array], Array]
 
 
@@ -40,6 +43,16 @@ class Estimator:
         """Values as the leading axis of everything else."""
         behind = self.extra + len(self.sample.groups) + 2
         return np.asarray(values, dtype=float).reshape((-1,) + (1,) * behind)
+
+    def only(self, group: int, member: int) -> Estimator:
+        """The same with one member of one ensemble group alone."""
+        axis = group - len(self.sample.groups) - 2
+        weights = tuple((1.0,) if i == group else one for i, one in enumerate(self.sample.weights))
+        pivot = self.pivot.only(axis, member) if isinstance(self.pivot, LawPivot) else restricted(self.pivot, axis, member)
+        return Estimator(
+            self.rule, replace(self.sample, draws={}, scores={}, weights=weights),
+            restricted(self.realisation, axis, member), pivot, self.noise, self.extra,
+        )  # fmt: skip
 
     def needed(self, wall: Array) -> Array:
         """The smallest signal that meets the goal by wall time; infinite before the first usable time."""
@@ -69,10 +82,18 @@ class Estimator:
     def chance_points(self, wall: Array) -> Array:
         """Chance at every point, before averaging."""
         real, at = self.realisation, self._times(wall)
-        sigma = np.sqrt(real.averaging.best_variance(at))
-        intervals = signal_intervals(self.rule, sigma, sigma, real.relative_variance(at), self.noise)
+        sigma, relative = np.sqrt(real.averaging.best_variance(at)), real.relative_variance(at)
         usable = real.averaging.usable(at)
-        return np.asarray(self.pivot.probability(_only(intervals, usable)))
+        total: Array = np.zeros(())
+        for noise in self._strata():
+            intervals = signal_intervals(self.rule, sigma, sigma, relative, noise)
+            total = total + self.pivot.probability(_only(intervals, usable)) / STRATA
+        return total
+
+    def _strata(self) -> list[Array]:
+        """Scores of the noise: each point's own, once in each of equally probable strata."""
+        place = special.ndtr(self.noise)
+        return [np.asarray(special.ndtri((stratum + place) / STRATA)) for stratum in range(STRATA)]
 
     def ratio_above(self, divisor: Array, value: Array) -> Array:
         """P(|signal| / divisor > value), divisor at every point."""
@@ -81,6 +102,17 @@ class Estimator:
 
     def _average(self, intervals: list[Interval]) -> Array:
         return self.sample.average(self.pivot.probability(intervals))
+
+
+def restricted(value: Any, axis: int, place: int) -> Any:
+    """Any structure of arrays with one place of one axis (counted from the end) kept, where an array has that axis."""
+    if isinstance(value, np.ndarray):
+        return np.take(value, [place], axis) if value.ndim >= -axis and value.shape[axis] > 1 else value
+    if isinstance(value, tuple):
+        return tuple(restricted(one, axis, place) for one in value)
+    if is_dataclass(value) and not isinstance(value, type):
+        return replace(value, **{f.name: restricted(getattr(value, f.name), axis, place) for f in fields(value)})
+    return value
 
 
 def beyond(rule: Rule, least: Array) -> list[Interval]:

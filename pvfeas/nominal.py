@@ -37,11 +37,11 @@ def nominal_draws(inputs: Sequence[Input]) -> Draws:
     return {one.address: np.full((1, 1), median_of(one)) for one in inputs}
 
 
-def stepped_draws(inputs: Sequence[Input], step: float) -> tuple[tuple[str, ...], Draws]:
+def stepped_draws(inputs: Sequence[Input], step: float, between: bool = True) -> tuple[tuple[str, ...], Draws]:
     """Medians, but one input moved by minus and plus `step` of its score in each column.
 
     Returns the moved addresses and draws of shape (1, 2 × addresses): minus, plus, minus, plus, …
-    Ensembles move to the members at the same normal probability.
+    Ensembles move by the spread between their members and within them, or only within them.
     """
     moved = tuple(
         sorted(set(uncertain_addresses(inputs)) | {one.address for one in inputs if isinstance(one.law, Ensemble)})
@@ -51,17 +51,17 @@ def stepped_draws(inputs: Sequence[Input], step: float) -> tuple[tuple[str, ...]
         values = np.full((1, 2 * len(moved)), median_of(one))
         if one.address in moved:
             place = 2 * moved.index(one.address)
-            values[0, place : place + 2] = _ends(one, step)
+            values[0, place : place + 2] = _ends(one, step, between)
         draws[one.address] = values
     return moved, draws
 
 
-def _ends(one: Input, step: float) -> Array:
+def _ends(one: Input, step: float, between: bool) -> Array:
     if not isinstance(one.law, Ensemble):
         return np.asarray(one.law.from_score(np.array([-step, step])))
     medians = np.array([law.median for law in one.law.laws])
     weights = np.asarray(one.law.weights)
     spread = np.sqrt((weights * (medians - (weights * medians).sum()) ** 2).sum())
     inner = [float(law.from_score(np.array([step]))[0] - law.median) for law in one.law.laws]
-    total = np.hypot(step * spread, (weights * np.asarray(inner)).sum())
+    total = np.hypot(step * spread if between else 0.0, (weights * np.asarray(inner)).sum())
     return np.asarray(ensemble_median(one.law) + np.array([-total, total]))

@@ -9,11 +9,14 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from scipy import special
 
 from pvfeas.laws import Array
 from pvfeas.points import half_width
 
 LOWEST, HIGHEST = -80.0, 140.0  # of ln(value): 1e-35 to 1e61 in any unit of this trade
+ACCURACY = 1e-9  # of P
+CLOSE = 0.01  # a root is close enough at this share of the error that the replicates show
 Distribution = Callable[[Array], Array]  # values (k,) -> P(quantity <= value), (k, replicates)
 
 
@@ -26,12 +29,12 @@ class Quantile:
 
 
 def solve(
-    distribution: Distribution, probabilities: Sequence[float], starts: Sequence[float], accuracy: float = 1e-9
+    distribution: Distribution, probabilities: Sequence[float], starts: Sequence[float], spread: float = 0.0
 ) -> list[Quantile]:
     """Quantiles of the pooled distribution and their errors from the spread of the replicates.
 
-    starts: first guesses of the quantiles, any positive values. Bracketed secant steps in ln x on
-    P - p, all quantiles at once; the error of ln x is that of P at the quantile over the density there.
+    starts: first guesses of the quantiles, any positive values; spread: a guess of the standard deviation of
+    ln x, 0 where there is none. Bracketed secant steps in ln x on P - p, all quantiles at once; the error of ln x is that of P at the quantile over the density there.
     """
     wanted = np.asarray(probabilities, dtype=float)
     reachable = distribution(np.array([np.exp(HIGHEST)]))[0]
@@ -41,25 +44,26 @@ def solve(
     if not np.any(inside):
         return found
     guesses = np.log(np.asarray(starts, dtype=float)[inside]).clip(LOWEST + 1.0, HIGHEST - 1.0)
-    x, density, replicates = _roots(distribution, wanted[inside], guesses, accuracy)
-    spread = half_width(replicates)
+    x, density, replicates = _roots(distribution, wanted[inside], guesses, spread)
+    errors = half_width(replicates)
     for i, place in enumerate(np.nonzero(inside)[0]):
         value = float(np.exp(x[i]))
-        found[place] = Quantile(value, float(value * spread[i] / density[i]) if density[i] > 0 else 0.0)
+        found[place] = Quantile(value, float(value * errors[i] / density[i]) if density[i] > 0 else 0.0)
     return found
 
 
-def _roots(distribution: Distribution, wanted: Array, x: Array, accuracy: float) -> tuple[Array, Array, Array]:
+def _roots(distribution: Distribution, wanted: Array, x: Array, spread: float) -> tuple[Array, Array, Array]:
     """ln x with P = wanted, the density there, and P of every replicate there."""
     low, high = np.full_like(x, LOWEST), np.full_like(x, HIGHEST)
     step = 0.02
-    density = np.zeros_like(x)
+    density = np.exp(-0.5 * special.ndtri(wanted) ** 2) / (spread * np.sqrt(2.0 * np.pi)) if spread > 0 else np.zeros_like(x)
+    told = np.zeros(x.shape, dtype=bool)  # whether the density is more than a guess
     replicates = distribution(np.exp(x))
     pooled = replicates.mean(axis=-1)
     for _ in range(120):
         miss = pooled - wanted
         low, high = np.where(miss < 0, x, low), np.where(miss < 0, high, x)
-        settled = (np.abs(miss) < accuracy) & (density > 0)
+        settled = (np.abs(miss) < np.maximum(ACCURACY, CLOSE * half_width(replicates))) & told & (density > 0)
         if np.all(settled | (high - low < 1e-12 * np.maximum(1.0, np.abs(x)))):
             break
         proposal = np.where(settled, x, _next(x, miss, density, step, low, high))
@@ -67,7 +71,9 @@ def _roots(distribution: Distribution, wanted: Array, x: Array, accuracy: float)
         new_pooled = new.mean(axis=-1)
         with np.errstate(divide="ignore", invalid="ignore"):
             slope = (new_pooled - pooled) / (proposal - x)
-        density = np.where((proposal != x) & (slope > 0), slope, np.where(proposal != x, 0.0, density))
+        moved = proposal != x
+        density = np.where(moved & (slope > 0), slope, np.where(moved, 0.0, density))
+        told = told | moved
         x, pooled, replicates = proposal, new_pooled, new
         step = min(2.0 * step, 4.0)
     return x, density, replicates
@@ -95,6 +101,11 @@ def of_values(values: Array, weights: Array, probabilities: Sequence[float]) -> 
     single = np.array([_inverted(values[:, r], weights[:, r], probabilities) for r in range(values.shape[1])])
     errors = [float(half_width(single[:, i])) if np.all(np.isfinite(single[:, i])) else np.inf for i in range(len(pooled))]
     return pooled, errors
+
+
+def pooled(values: Array, weights: Array, probabilities: Sequence[float]) -> list[float]:
+    """Quantiles of weighted draws of any shape, without errors."""
+    return _inverted(values.ravel(), weights.ravel(), probabilities)
 
 
 def _inverted(values: Array, weights: Array, probabilities: Sequence[float]) -> list[float]:

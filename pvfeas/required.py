@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 
+from pvfeas.conditional import excess
 from pvfeas.decision import Rule, needed_signal
 from pvfeas.laws import Array
 from pvfeas.quantiles import HIGHEST, LOWEST
 from pvfeas.realisation import Realisation
-
-HALVINGS = 62  # of 220 in ln t: 5e-17
+from pvfeas.roots import falling_root
 
 
 def needed_at(real: Realisation, rule: Rule, wall: Array) -> Array:
@@ -27,22 +27,18 @@ def counted(rule: Rule, signal: Array) -> Array:
 def required_wall_time(real: Realisation, rule: Rule, signal: Array) -> Array:
     """Smallest wall time in s at which each signed signal meets the goal; infinite where none does.
 
-    Bisection in ln t, element by element; the needed signal never grows with time.
+    The needed signal never grows with time; where it equals the signal is found in ln t.
     """
     size = counted(rule, signal)
-
-    def met(wall: Array) -> Array:
-        return np.asarray(size >= needed_at(real, rule, wall))
-
     last = np.minimum(real.averaging.last, np.exp(HIGHEST))
     first = np.maximum(real.averaging.first, np.exp(LOWEST))
     shape = np.broadcast_shapes(size.shape, np.shape(last), np.shape(first), np.shape(real.averaging.statistical))
-    low = np.broadcast_to(np.log(first), shape).copy()
-    high = np.broadcast_to(np.log(last), shape).copy()
-    reachable, at_once = met(np.asarray(np.exp(high))), met(np.broadcast_to(first, shape))
-    for _ in range(HALVINGS):
-        middle = (low + high) / 2.0
-        enough = met(np.exp(middle))
-        low, high = np.where(enough, low, middle), np.where(enough, middle, high)
-    found = np.where(at_once, first, np.exp(high))
+    low, high = np.broadcast_to(np.log(first), shape), np.broadcast_to(np.log(last), shape)
+
+    def lacking(log_time: Array) -> Array:
+        return excess(needed_at(real, rule, np.clip(np.exp(log_time), first, last)), size)
+
+    reachable, at_once = lacking(high) <= 0.0, lacking(low) <= 0.0
+    low = np.where(reachable & ~at_once, low, high)  # nothing to look for elsewhere
+    found = np.where(at_once, first, np.clip(np.exp(falling_root(lacking, low, high)), first, last))
     return np.asarray(np.where(reachable & (first <= last), found, np.inf))

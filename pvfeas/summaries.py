@@ -9,7 +9,7 @@ import numpy as np
 from pvfeas.conditional import Pivot
 from pvfeas.laws import Array
 from pvfeas.points import Sample
-from pvfeas.quantiles import Distribution, Quantile, of_values, solve
+from pvfeas.quantiles import Distribution, Quantile, of_values, pooled, solve
 from pvfeas.results import Quantiles
 
 PROBABILITIES: Mapping[str, float] = {"q05": 0.05, "q16": 0.16, "q50": 0.5, "q84": 0.84, "q95": 0.95}
@@ -42,6 +42,22 @@ def plain(sample: Sample, values: Array, unit: str, nominal: float | None) -> Qu
     return five(pairs, unit, nominal)
 
 
+def rough(sample: Sample, values: Array, unit: str, nominal: float | None) -> Quantiles:
+    """As plain, without errors: first guesses."""
+    numbers = pooled(*flattened(sample, values), list(PROBABILITIES.values()))
+    return five({name: (_finite(one), None) for name, one in zip(PROBABILITIES, numbers, strict=True)}, unit, nominal)
+
+
+def scaled(found: Quantiles, factor: float) -> Quantiles:
+    """Quantiles, nominal value and errors times one number."""
+
+    def times(value: float | None) -> float | None:
+        return None if value is None else value * factor
+
+    pairs = {name: (times(getattr(found, name)), times(found.error.get(name))) for name in PROBABILITIES}
+    return five(pairs, found.unit, times(found.nominal))
+
+
 def flattened(sample: Sample, values: Array, only: tuple[int, int] | None = None) -> tuple[Array, Array]:
     """Values and weights as (draws, replicates), the members of every group enumerated.
 
@@ -68,7 +84,8 @@ def positive(
     distribution: Distribution, starts: Quantiles, unit: str, nominal: float | None
 ) -> Quantiles:
     """Quantiles of a positive quantity from its distribution function; starts: rough ones."""
-    found = solve(distribution, list(PROBABILITIES.values()), guesses(starts, nominal))
+    first = guesses(starts, nominal)
+    found = solve(distribution, list(PROBABILITIES.values()), first, abs(float(np.log(first[3] / first[1]))) / 2.0)
     return five(_pairs(dict(zip(PROBABILITIES, found, strict=True))), unit, nominal)
 
 
@@ -95,13 +112,14 @@ def signed(sample: Sample, pivot: Pivot, rough: Quantiles, unit: str, nominal: f
 
     not_positive, not_negative = float(up_to(np.zeros(1)).mean()), float(down_to(np.zeros(1)).mean())
     found: dict[str, Quantile] = {name: Quantile(0.0, 0.0) for name in PROBABILITIES}
-    for name, p in PROBABILITIES.items():
-        start = [abs(getattr(rough, name) or nominal or 1.0)]
-        if p > not_positive:
-            found[name] = solve(up_to, [p], start)[0]
-        elif p < 1.0 - not_negative:
-            mirrored = solve(down_to, [1.0 - p], start)[0]
-            found[name] = Quantile(None if mirrored.value is None else -mirrored.value, mirrored.error)
+    above = [name for name, p in PROBABILITIES.items() if p > not_positive]
+    below = [name for name, p in PROBABILITIES.items() if p < 1.0 - not_negative and name not in above]
+    start = {name: abs(getattr(rough, name) or nominal or 1.0) for name in PROBABILITIES}
+    if above:
+        found |= zip(above, solve(up_to, [PROBABILITIES[n] for n in above], [start[n] for n in above]), strict=True)
+    if below:
+        mirrored = solve(down_to, [1.0 - PROBABILITIES[n] for n in below], [start[n] for n in below])
+        found |= zip(below, (Quantile(None if m.value is None else -m.value, m.error) for m in mirrored), strict=True)
     return five(_pairs(found), unit, nominal)
 
 

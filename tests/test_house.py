@@ -20,7 +20,7 @@ NUMBER_HALF = (
     ("tables", "profiles", "thresholds"),
     ("techniques", "centre_bounds", "limits", "systematics", "schedule"),
     ("problem", "averaging", "decision"),
-    ("points", "conditional", "quantiles", "nominal", "summaries"),
+    ("points", "conditional", "quantiles", "nominal", "roots", "summaries"),
     ("realisation", "estimator", "linear", "monte_carlo", "required", "integration"),
     ("questions",),
 )

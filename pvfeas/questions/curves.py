@@ -9,13 +9,14 @@ import numpy as np
 from pvfeas.laws import Array
 from pvfeas.options import Options
 from pvfeas.points import half_width
-from pvfeas.problem import Goal, Problem
-from pvfeas.quantiles import of_values
-from pvfeas.questions.assess import Plan, chosen, plan, samples
-from pvfeas.questions.sections import Case, chance_points, finite, ratio, unit_need
+from pvfeas.problem import Problem
+from pvfeas.quantiles import pooled
+from pvfeas.questions.planning import Case, Plan, chosen, samplings
+from pvfeas.questions.sections import chance_points, finite, ratio, unit_need
 from pvfeas.required import required_wall_time
 from pvfeas.results import ChanceCurve, Curves, SigmaCurve
 from pvfeas.summaries import flattened
+from pvfeas.tables import Goal
 
 STEPS_PER_DECADE = 24
 LONGEST = 1e10  # s; no figure goes beyond three hundred years
@@ -24,14 +25,9 @@ LONGEST = 1e10  # s; no figure goes beyond three hundred years
 def curves(problem: Problem, names: Sequence[str] = (), options: Options | None = None) -> Curves:
     """Curves of the named scenarios on one sample of the study."""
     options = options or Options()
-    planned = [plan(problem, one) for one in chosen(problem, names)]
-    sample, noise_of, small = next(samples(problem, options))
-    cases = []
-    for one in planned:
-        full = one.on(problem, sample, noise_of(one.scenario.name), plain=small is None)
-        rough = one.on(problem, small or sample, np.zeros((1, 1)), plain=True)
-        cases.append(Case(problem, one.rule, one.limit_rule, full, rough, one.nominal))
-    wall = wall_times(cases, planned)
+    sampling = next(samplings(problem, options))
+    cases = [sampling.case(Plan(problem, one)) for one in chosen(problem, names)]
+    wall = wall_times(cases)
     return Curves(
         title=problem.title,
         goal=goal_in_words(problem.goal),
@@ -40,13 +36,12 @@ def curves(problem: Problem, names: Sequence[str] = (), options: Options | None 
     )
 
 
-def wall_times(cases: Sequence[Case], planned: Sequence[Plan]) -> Array:
+def wall_times(cases: Sequence[Case]) -> Array:
     """A common logarithmic grid around the required times and the budget, s."""
     marks = [case.budget for case in cases]
-    for case, one in zip(cases, planned, strict=True):
-        times = required_wall_time(case.small.sampled, one.rule, case.small.signal_drawn)
-        draws, weights = flattened(case.small.estimator.sample, times)
-        marks += [t for t in of_values(draws, weights, [0.1, 0.5, 0.9])[0] if 0 < t < LONGEST]
+    for case in cases:
+        times = required_wall_time(case.small.sampled, case.rule, case.small.signal_drawn)
+        marks += [t for t in pooled(*flattened(case.small.sample, times), [0.1, 0.5, 0.9]) if 0 < t < LONGEST]
     low, high = min(marks) / 5.0, min(max(marks) * 5.0, LONGEST)
     first, last = np.floor(np.log10(low)), np.ceil(np.log10(high))
     count = int(last - first) * STEPS_PER_DECADE + 1
@@ -59,16 +54,15 @@ def _sigma(case: Case, wall: Array) -> SigmaCurve:
     low_band, high_band = [], []
     for at in wall:
         sigma = np.sqrt(case.full.sampled.averaging.variance(np.asarray(at)))
-        draws, weights = flattened(case.full.estimator.sample, sigma)
-        low, high = of_values(draws, weights, [0.16, 0.84])[0]
+        low, high = pooled(*flattened(case.full.sample, sigma), [0.16, 0.84])
         low_band.append(low)
         high_band.append(high)
     nominal = averaging.parts(wall.reshape(-1, 1, 1))
     parts = {
         name: _row(np.sqrt(np.broadcast_to(part, (len(wall), 1, 1)))) for name, part in nominal.items() if np.any(part)
     }
-    need16, need50, need84 = ratio(case, lambda scene: unit_need(case, scene), [0.16, 0.5, 0.84])
-    need = np.abs(case.nominal.signal_drawn) / unit_need(case, case.nominal)
+    need16, need50, need84 = ratio(case, lambda real: unit_need(case, real), [0.16, 0.5, 0.84])
+    need = np.abs(case.nominal.signal_drawn) / unit_need(case, case.nominal.sampled)
     left = float(np.sqrt(averaging.best_variance(np.asarray(np.inf))).reshape(-1)[0])
     crossing = required_wall_time(case.nominal.sampled, case.rule, case.nominal.signal_drawn)
     return SigmaCurve(
@@ -123,6 +117,3 @@ def goal_in_words(goal: Goal) -> str:
         return f"exclude {what} at {100 * goal.confidence:.4g} % confidence{power}"
     what = "the sign of the splitting" if goal.kind == "sign" else "the splitting"
     return f"detect {what} at {goal.significance:.3g} sigma{power}"
-
-
-

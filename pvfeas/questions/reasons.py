@@ -7,7 +7,8 @@ from collections.abc import Mapping
 import numpy as np
 
 from pvfeas.laws import Array
-from pvfeas.questions.sections import Case, closed_chance, unit_need
+from pvfeas.questions.planning import Case
+from pvfeas.questions.sections import closed_chance, unit_need
 from pvfeas.required import counted
 from pvfeas.results import Limiting
 
@@ -24,7 +25,7 @@ def limiting(case: Case) -> Limiting:
     Supply limits a draw whose statistics dominate, whose sample ends before the budget, and
     whose chance is then below one half.
     """
-    scene, sample = case.full, case.full.estimator.sample
+    scene, sample = case.full, case.full.sample
     averaging = scene.sampled.averaging
     parts = averaging.parts(averaging.best_time(np.asarray(case.budget)))
     classes = {
@@ -45,7 +46,7 @@ def reason(case: Case, reachable: float, median: float | None) -> tuple[str, str
     """Status and its reason, with the nearest change that cures an unreachable goal, at the nominal values."""
     status = "reachable" if median is not None else "unreachable"
     averaging = case.nominal.sampled.averaging
-    need = _number(unit_need(case, case.nominal))
+    need = _number(unit_need(case, case.nominal.sampled))
     signal = _number(counted(case.rule, case.nominal.signal_drawn))
     if not np.isfinite(need):
         return status, "the purity is not known well enough for the accuracy asked: lower samples.ee_known_to"

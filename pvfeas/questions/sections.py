@@ -3,17 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, replace
 
 import numpy as np
 
-from pvfeas.conditional import NoPivot
 from pvfeas.decision import Rule, chance, needed_signal
 from pvfeas.integration import Scene
 from pvfeas.laws import Array
 from pvfeas.points import half_width
-from pvfeas.problem import Ensemble, Problem
-from pvfeas.quantiles import of_values, solve
+from pvfeas.problem import Ensemble
+from pvfeas.quantiles import pooled, solve
+from pvfeas.questions.planning import Case
+from pvfeas.realisation import Realisation
 from pvfeas.required import counted, needed_at, required_wall_time
 from pvfeas.results import (
     Chance,
@@ -26,30 +26,8 @@ from pvfeas.results import (
     Sigma,
     Significance,
 )
-from pvfeas.summaries import PROBABILITIES, flattened, guesses, plain, positive, signed
+from pvfeas.summaries import PROBABILITIES, flattened, guesses, plain, positive, rough, scaled, signed
 from pvfeas.systematics import surviving_significance
-
-
-@dataclass(frozen=True)
-class Case:
-    """A scenario on the full sample, on a small one (for first guesses) and at the nominal values."""
-
-    problem: Problem
-    rule: Rule
-    limit_rule: Rule
-    full: Scene
-    small: Scene
-    nominal: Scene
-
-    @property
-    def budget(self) -> float:
-        """Wall time of the budget, s."""
-        return self.problem.goal.within[-1]
-
-    @property
-    def integrates(self) -> bool:
-        """Whether an input is integrated exactly."""
-        return not isinstance(self.full.estimator.pivot, NoPivot)
 
 
 def _number(values: Array) -> float:
@@ -61,8 +39,14 @@ def finite(value: float) -> float | None:
     return value if np.isfinite(value) else None
 
 
-def _plain(case: Case, values: Callable[[Scene], Array], unit: str) -> Quantiles:
-    return plain(case.full.estimator.sample, values(case.full), unit, finite(_number(values(case.nominal))))
+def spread(case: Case, values: Callable[[Realisation], Array], unit: str) -> Quantiles:
+    """Quantiles of a quantity that cannot be negative, the input that matters most for it integrated."""
+    nominal = finite(_number(values(case.nominal.sampled)))
+    address = case.plan.widest(values)
+    if case.along is None or not address:
+        return plain(case.full.sample, values(case.full.sampled), unit, nominal)
+    start = rough(case.small.sample, values(case.small.sampled), unit, nominal)
+    return positive(case.along.up_to(address, values), start, unit, nominal)
 
 
 def splittings(case: Case) -> tuple[Quantiles, Quantiles]:
@@ -72,10 +56,13 @@ def splittings(case: Case) -> tuple[Quantiles, Quantiles]:
         (case.full.splitting, lambda scene: scene.splitting_drawn),
         (case.full.seen, lambda scene: scene.sampled.factor * scene.splitting_drawn),
     ):
-        rough = _plain(case, values, "Hz")
-        if pivot is not None:
-            rough = signed(case.full.estimator.sample, pivot, rough, "Hz", rough.nominal or 0.0)
-        results.append(rough)
+        nominal = finite(_number(values(case.nominal)))
+        if pivot is None:
+            found = plain(case.full.sample, values(case.full), "Hz", nominal)
+        else:
+            start = rough(case.small.sample, values(case.small), "Hz", nominal)
+            found = signed(case.full.sample, pivot, start, "Hz", nominal or 0.0)
+        results.append(found)
     return results[0], results[1]
 
 
@@ -84,24 +71,19 @@ def centre_uncertainty(case: Case) -> Quantiles | None:
     if case.nominal.sampled.technique_a.states_splitting:
         return None
 
-    def values(scene: Scene) -> Array:
-        real = scene.sampled
-        return np.sqrt(real.technique_a.centre_variance(real.line))
-
-    return _plain(case, values, "Hz")
+    return spread(case, lambda real: np.sqrt(real.technique_a.centre_variance(real.line)), "Hz")
 
 
 def sensitivity(case: Case) -> Quantiles:
     """Standard uncertainty of the splitting seen times the root of live time, Hz s^0.5, no systematics."""
-    return _plain(case, lambda scene: np.sqrt(scene.sampled.noise), "Hz s^0.5")
+    return spread(case, lambda real: np.sqrt(real.noise), "Hz s^0.5")
 
 
 def required_times(case: Case) -> tuple[RequiredTime, RequiredTime]:
     """Required time on the wall clock and on the live clock."""
     nominal = _number(_required(case.nominal, case.rule))
-    wall = _required_quantiles(case, finite(nominal), live=False)
-    duty = _number(case.nominal.sampled.averaging.live_per_wall)
-    live = _required_quantiles(case, finite(nominal * duty), live=True)
+    wall = _required_quantiles(case, finite(nominal))
+    live = _live(case, wall, nominal)
     reachable, in_time = _probabilities(case)
     shared: dict[str, float | None] = {
         "reachable": float(half_width(reachable)), "in_time": float(half_width(in_time)),
@@ -127,16 +109,22 @@ def _required(scene: Scene, rule: Rule) -> Array:
     return required_wall_time(scene.sampled, rule, scene.signal_drawn)
 
 
-def _required_quantiles(case: Case, nominal: float | None, live: bool) -> Quantiles:
-    def values(scene: Scene) -> Array:
-        wall = _required(scene, case.rule)
-        return np.asarray(wall * scene.sampled.averaging.live_per_wall) if live else wall
-
+def _required_quantiles(case: Case, nominal: float | None) -> Quantiles:
     if not case.integrates:
-        return plain(case.full.estimator.sample, values(case.full), "s", nominal)
-    rough = plain(case.small.estimator.sample, values(case.small), "s", nominal)
-    estimator = case.full.estimator
-    return positive(estimator.met_by_live if live else estimator.met_by, rough, "s", nominal)
+        return plain(case.full.sample, _required(case.full, case.rule), "s", nominal)
+    start = rough(case.small.sample, _required(case.small, case.rule), "s", nominal)
+    return positive(case.full.estimator.met_by, start, "s", nominal)
+
+
+def _live(case: Case, wall: Quantiles, nominal: float) -> Quantiles:
+    """Quantiles on the live clock: those of the wall clock scaled, where one number scales them."""
+    duty = case.full.sampled.averaging.live_per_wall
+    middle = _number(case.nominal.sampled.averaging.live_per_wall)
+    if duty.size == 1:
+        return scaled(wall, middle)
+    if not case.integrates:
+        return plain(case.full.sample, _required(case.full, case.rule) * duty, "s", finite(nominal * middle))
+    return positive(case.full.estimator.met_by_live, scaled(wall, middle), "s", finite(nominal * middle))
 
 
 def _probabilities(case: Case) -> tuple[Array, Array]:
@@ -172,20 +160,14 @@ def _labels(case: Case) -> list[tuple[int, int, str]]:
 
 def calculations(case: Case, found: Quantiles) -> dict[str, float | None]:
     """Median required time if only one of the rival calculations is right."""
-    estimator, medians = case.full.estimator, {}
+    medians: dict[str, float | None] = {}
     for group, place, label in _labels(case):
-
-        def one(points: Array, group: int = group, place: int = place) -> Array:
-            return estimator.sample.member_average(points, group)[place]
-
         if case.integrates:
             start = [guesses(found, found.nominal)[2]]
-            medians[label] = solve(lambda wall, one=one: estimator.met_by(wall, one), [0.5], start)[0].value
+            medians[label] = solve(case.full.estimator.only(group, place).met_by, [0.5], start)[0].value
         else:
-            wall = np.exp(-_required(case.full, case.rule))  # any falling map keeps infinities apart
-            draws, weights = flattened(estimator.sample, wall, only=(group, place))
-            middle = of_values(draws, weights, [0.5])[0][0]
-            medians[label] = float(-np.log(middle)) if middle > 0 else None
+            draws, weights = flattened(case.full.sample, _required(case.full, case.rule), only=(group, place))
+            medians[label] = finite(pooled(draws, weights, [0.5])[0])
     return medians
 
 
@@ -226,37 +208,32 @@ def chances(case: Case) -> Chance:
     )  # fmt: skip
 
 
-def ratio(case: Case, divisor: Callable[[Scene], Array], probabilities: list[float]) -> list[float | None]:
+def ratio(case: Case, divisor: Callable[[Realisation], Array], probabilities: list[float]) -> list[float | None]:
     """Quantiles of |signal|/divisor, the divisor taken at every point."""
-    sampled = np.abs(case.full.signal_drawn) / divisor(case.full)
-    draws, weights = flattened(case.full.estimator.sample, sampled)
-    rough, _ = of_values(draws, weights, probabilities)
+    drawn = case.small if case.integrates else case.full
+    first = pooled(*flattened(drawn.sample, np.abs(drawn.signal_drawn) / divisor(drawn.sampled)), probabilities)
     if not case.integrates:
-        return [finite(value) for value in rough]
+        return [finite(value) for value in first]
     estimator = case.full.estimator
-    if estimator.extra:  # the divisor along the pivot's nodes
-        nodes = replace(case.full, sampled=estimator.realisation)
-        along = divisor(nodes)
-    else:
-        along = divisor(case.full)
-    starts = [value if np.isfinite(value) and value > 0 else 1.0 for value in rough]
+    along = divisor(estimator.realisation)
+    starts = [value if np.isfinite(value) and value > 0 else 1.0 for value in first]
     found = solve(lambda value: 1.0 - estimator.ratio_above(along, value), probabilities, starts)
     return [quantile.value for quantile in found]
 
 
-def sigma_at(scene: Scene, wall: float) -> Array:
+def sigma_at(real: Realisation, wall: float) -> Array:
     """Standard uncertainty of the splitting seen by a wall time, Hz."""
-    return np.asarray(np.sqrt(scene.sampled.averaging.best_variance(np.asarray(wall))))
+    return np.asarray(np.sqrt(real.averaging.best_variance(np.asarray(wall))))
 
 
 def significance(case: Case) -> Significance:
     """|splitting seen| over sigma at the budget."""
 
-    def divisor(scene: Scene) -> Array:
-        return np.maximum(sigma_at(scene, case.budget), 1e-300)
+    def divisor(real: Realisation) -> Array:
+        return np.maximum(sigma_at(real, case.budget), 1e-300)
 
     q16, q50, q84 = ratio(case, divisor, [0.16, 0.5, 0.84])
-    nominal = _number(np.abs(case.nominal.signal_drawn) / divisor(case.nominal))
+    nominal = _number(np.abs(case.nominal.signal_drawn) / divisor(case.nominal.sampled))
     freedom = case.nominal.sampled.averaging.degrees_of_freedom(np.asarray(case.budget))
     left = None if q50 is None else finite(_number(surviving_significance(np.asarray(q50), freedom)))
     return Significance(Moment(case.budget), q16, q50, q84, finite(nominal), left)
@@ -266,18 +243,19 @@ def sigmas(case: Case) -> Sigma:
     """sigma at the budget in parts, and the nominal shares of its square."""
     budget = np.asarray(case.budget)
 
-    def level(select: Callable[[str], bool]) -> Level:
-        def values(scene: Scene) -> Array:
-            averaging = scene.sampled.averaging
-            parts = averaging.parts(averaging.best_time(budget))
-            return np.sqrt(sum((part for name, part in parts.items() if select(name)), np.zeros((1, 1))))
-
-        draws, weights = flattened(case.full.estimator.sample, values(case.full))
-        return Level(finite(of_values(draws, weights, [0.5])[0][0]), finite(_number(values(case.nominal))))
+    drawn = case.full.sampled.averaging
+    parts_drawn = drawn.parts(drawn.best_time(budget))
 
     best = case.nominal.sampled.averaging
     parts = {name: _number(part) for name, part in best.parts(best.best_time(budget)).items()}
     total = sum(parts.values())
+
+    def level(select: Callable[[str], bool]) -> Level:
+        names = [name for name in parts if select(name)]
+        values = np.sqrt(sum((parts_drawn[name] for name in names), np.zeros((1, 1))))
+        middle = pooled(*flattened(case.full.sample, values), [0.5])[0]
+        return Level(finite(middle), finite(float(np.sqrt(sum(parts[name] for name in names)))))
+
     return Sigma(
         at=Moment(case.budget), unit="Hz",
         total=level(lambda name: True),
@@ -288,31 +266,33 @@ def sigmas(case: Case) -> Sigma:
     )  # fmt: skip
 
 
-def unit_need(case: Case, scene: Scene) -> Array:
+def unit_need(case: Case, real: Realisation) -> Array:
     """Signal over sigma that the goal needs at the budget; infinite where no sigma is small enough."""
-    one, relative = np.ones((1, 1)), scene.sampled.relative_variance(np.asarray(case.budget))
+    one, relative = np.ones((1, 1)), real.relative_variance(np.asarray(case.budget))
     return needed_signal(case.rule, one, one, relative)
 
 
 def resolution(case: Case) -> Resolution:
     """sigma that the goal needs: of the splitting, of one line centre, as fractions."""
 
-    def level(scale: Callable[[Scene], Array]) -> Level:
-        def divisor(scene: Scene) -> Array:
-            return unit_need(case, scene) * scale(scene)
+    needed = Level(
+        ratio(case, lambda real: unit_need(case, real), [0.5])[0],
+        finite(_number(np.abs(case.nominal.signal_drawn) / unit_need(case, case.nominal.sampled))),
+    )
 
-        nominal = _number(np.abs(case.nominal.signal_drawn) / divisor(case.nominal))
-        return Level(ratio(case, divisor, [0.5])[0], finite(nominal))
+    def fraction(scale: Callable[[Realisation], Array]) -> Level:
+        nominal = _number(scale(case.nominal.sampled))
+        if scale(case.full.sampled).size == 1:
+            return Level(*(None if one is None else one / nominal for one in (needed.q50, needed.nominal)))
+        middle = ratio(case, lambda real: unit_need(case, real) * scale(real), [0.5])[0]
+        return Level(middle, None if needed.nominal is None else needed.nominal / nominal)
 
     line, technique = case.nominal.sampled.line, case.nominal.sampled.technique_a
-    needed = level(lambda scene: np.ones((1, 1)))
     centre = Level(*(None if v is None else v / np.sqrt(2.0) for v in (needed.q50, needed.nominal)))
-    frequency = None
-    if line.frequency is not None:
-        frequency = level(lambda scene: _given(scene.sampled.line.frequency))
+    frequency = None if line.frequency is None else fraction(lambda real: _given(real.line.frequency))
     width = None
     if technique.interrogation_width(line) is not None:
-        width = level(lambda scene: _given(scene.sampled.technique_a.interrogation_width(scene.sampled.line)))
+        width = fraction(lambda real: _given(real.technique_a.interrogation_width(real.line)))
     return Resolution(needed=needed, needed_centre=centre, of_frequency=frequency, of_fwhm=width)
 
 
@@ -324,18 +304,18 @@ def _given(values: Array | None) -> Array:
 def reach(case: Case) -> Quantiles:
     """The smallest true splitting that meets the goal within the budget, Hz."""
 
-    def values(scene: Scene) -> Array:
-        needed = needed_at(scene.sampled, case.rule, np.asarray(case.budget))
+    def values(real: Realisation) -> Array:
+        needed = needed_at(real, case.rule, np.asarray(case.budget))
         with np.errstate(divide="ignore"):
-            return np.asarray(needed / np.abs(scene.sampled.factor))
+            return np.asarray(needed / np.abs(real.factor))
 
-    return _plain(case, values, "Hz")
+    return spread(case, values, "Hz")
 
 
 def limit(case: Case) -> Limit:
     """Median over outcomes and inputs of the limit on the true splitting if there is none."""
-    rule, budget = case.limit_rule, np.asarray(case.budget)
-    real, sample = case.full.sampled, case.full.estimator.sample
+    rule, budget = case.plan.limit_rule, np.asarray(case.budget)
+    real, sample = case.full.sampled, case.full.sample
     sigma = np.sqrt(real.averaging.best_variance(budget))
     relative, usable = real.relative_variance(budget), real.averaging.usable(budget)
 

@@ -9,9 +9,11 @@ from pvfeas.results import Quantiles, RequiredTime, ScenarioResult
 MEDIAN, OTHER, PROBABILITY = 0.002, 0.01, 0.001  # relative, relative, absolute
 
 
-def unmet(result: ScenarioResult, tolerance: float) -> list[str]:
-    """Names of the numbers whose 95 % half-width exceeds the tolerance."""
-    return [name for name, error, allowed in _checked(result) if error is not None and error > allowed * tolerance]
+def unmet(result: ScenarioResult, tolerance: float) -> set[str]:
+    """Which parts of the answer hold a number whose 95 % half-width exceeds the tolerance."""
+    return {
+        name.split(".")[0] for name, error, allowed in _checked(result) if error is not None and error > allowed * tolerance
+    }
 
 
 def _checked(result: ScenarioResult) -> Iterator[tuple[str, float | None, float]]:
