@@ -65,18 +65,18 @@ class Steps:
         free = [a for a in sorted(shares) if a not in self._ensembles and shares[a] > 0]
         return max(free, key=lambda a: (shares[a], a), default="")
 
-    def margin_shares(self, problem: Problem, signal: Expression) -> Mapping[str, float]:
-        """Shares of ln(signal/sigma) at the budget."""
+    def margin(self, problem: Problem, signal: Expression) -> Array:
+        """ln(|signal seen|/sigma) at the budget at every step."""
         if self.real is None:
-            return {}
+            return np.zeros((1, 0))
         sigma = 0.5 * np.log(self.real.averaging.best_variance(np.asarray(problem.goal.within[-1])))
         with np.errstate(divide="ignore"):
-            return self.shares(np.log(np.abs(signal.at(self.draws) * self.real.factor)) - sigma)
+            return np.asarray(np.log(np.abs(signal.at(self.draws) * self.real.factor)) - sigma)
 
 
 def choose(problem: Problem, scenario: ScenarioProblem, signal: Expression, steps: Steps) -> Choice:
     """The splitting's own widest input if it matters, else the input with the largest share."""
-    shares = steps.margin_shares(problem, signal)
+    shares = steps.shares(steps.margin(problem, signal))
     uncertain = set(uncertain_addresses(problem.inputs))
     elsewhere, count = others_of(scenario), Counter(signal.inputs)
     own = [a for a in signal.inputs if a in uncertain and count[a] == 1 and a not in elsewhere]

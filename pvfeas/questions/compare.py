@@ -14,7 +14,7 @@ from pvfeas.integration import draws_along, node_axis
 from pvfeas.laws import Array
 from pvfeas.nominal import nominal_draws
 from pvfeas.options import Options
-from pvfeas.points import Sample, half_width
+from pvfeas.points import half_width
 from pvfeas.problem import Draws, Problem
 from pvfeas.questions.assess import Progress, assess
 from pvfeas.questions.planning import Plan, Sampling, chosen, samplings
@@ -23,8 +23,8 @@ from pvfeas.realisation import Realisation, realise
 from pvfeas.required import counted, needed_at, required_wall_time
 from pvfeas.results import Assessment, Comparison, Difference, Odds
 
-SAME = 1e-9  # relative: two required times closer than this are equal
-TINY = 1e-300
+ENOUGH = 0.05  # of the variance of the ratio of the times
+SAME = 1e-9  # relative: signals closer than this to what is needed are the same, and so are the times
 
 
 def compare(
@@ -59,58 +59,69 @@ def odds(problem: Problem, names: Sequence[str], options: Options) -> tuple[Odds
 
 
 def _pair(sampling: Sampling, first: Plan, second: Plan) -> Odds:
-    sample, margins = _margins(sampling, first, second)
-    parts = [sample.average(one) for one in margins]
+    lead, other, address = _lead(first, second)
+    if sampling.thin is None or not address:
+        sample = sampling.full
+        points = [np.asarray(one, dtype=float) for one in _sooner_neither_same(lead, other, sample.draws)[0]]
+    else:
+        sample = sampling.thin
+        inside, margins = _sooner_neither_same(lead, other, draws_along(sampling.problem, sample, address))
+        points = [along_nodes(one, margin.__getitem__, node_axis(sample)) for one, margin in zip(inside, margins, strict=True)]
+    sooner, neither, same = (sample.average(one) for one in points)
+    later = np.maximum(1.0 - sooner - neither - same, 0.0)
     nominal = [_number(_times(one, one.nominal.sampled, nominal_draws(one.problem.inputs))) for one in (first, second)]
     return Odds(
         first=first.scenario.name,
         second=second.scenario.name,
-        first_sooner=float(parts[0].mean()),
-        second_sooner=float(parts[1].mean()),
-        neither=float(parts[2].mean()),
-        error=max(float(half_width(part)) for part in parts),
+        first_sooner=float((sooner if lead is first else later).mean()),
+        second_sooner=float((later if lead is first else sooner).mean()),
+        neither=float(neither.mean()),
+        error=max(float(half_width(part)) for part in (sooner, later, neither)),
         nominal_ratio=nominal[1] / nominal[0] if np.all(np.isfinite(nominal)) and nominal[0] > 0 else None,
     )
 
 
-def _margins(sampling: Sampling, first: Plan, second: Plan) -> tuple[Sample, list[Array]]:
-    """The sample, and at each of its points the probabilities: first sooner, second sooner, both unreachable.
+def _lead(first: Plan, second: Plan) -> tuple[Plan, Plan, str]:
+    """The scenario whose own input is integrated, the other one, and that input (empty: none).
 
-    The input that matters most for the ratio of the times is integrated, as in NodePivot.
+    An input of one scenario alone is taken where it carries enough of the spread of the ratio of signal to sigma,
+    for the other time then needs to be found only once for each point; else the input with the largest part.
     """
-    address = _widest(first, second)
-    if sampling.thin is None or not address:
-        return sampling.full, [np.asarray(one > 0, dtype=float) for one in _ordered(first, second, sampling.full.draws)]
-    sample = sampling.thin
-    margins = _ordered(first, second, draws_along(sampling.problem, sample, address))
-    return sample, [along_nodes(one > 0, one.__getitem__, node_axis(sample)) for one in margins]
-
-
-def _widest(first: Plan, second: Plan) -> str:
     steps = first.steps
     if steps.real is None or second.steps.real is None:
-        return ""
-    times = [np.log(_times(one, one.steps.real, steps.draws)) for one in (first, second) if one.steps.real is not None]
-    with np.errstate(invalid="ignore"):
-        return steps.largest(steps.shares(times[1] - times[0]))
+        return first, second, ""
+    logs = [one.steps.margin(one.problem, one.target) for one in (first, second)]
+    shares = steps.shares(logs[1] - logs[0])
+    alone = [steps.shares(log) for log in logs]
+    own = {a: share for a, share in shares.items() if min(one[a] for one in alone) == 0.0}
+    address = steps.largest(own)
+    if not address or own[address] < ENOUGH:
+        address = steps.largest(shares)
+    if not address or alone[0][address] >= alone[1][address]:
+        return first, second, address
+    return second, first, address
 
 
 def _times(planned: Plan, real: Realisation, draws: Draws) -> Array:
     return required_wall_time(real, planned.rule, real.factor * planned.target.at(draws))
 
 
-def _ordered(first: Plan, second: Plan, draws: Draws) -> list[Array]:
-    """Three margins, positive where the first is sooner, where the second is, where both are unreachable."""
-    times, lacking = [], []
-    for one in (first, second):
-        real = realise(one.scenario, draws)
-        signal = real.factor * one.target.at(draws)
-        times.append(required_wall_time(real, one.rule, signal))
-        floor = needed_at(real, one.rule, np.asarray(np.inf))
-        lacking.append(np.where(np.isinf(times[-1]), np.maximum(excess(floor, counted(one.rule, signal)), TINY), -1.0))
-    one, other = times
-    sooner, later = (np.where(np.abs(x) <= SAME, -TINY, x) for x in (excess(other, one), excess(one, other)))
-    return [sooner, later, np.minimum(*lacking)]
+def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Array], list[Array]]:
+    """Whether, and how clearly, the lead is sooner, both are unreachable, both need the same time.
+
+    The lead is sooner where its signal is more than it needs at the required time of the other, which
+    may be infinite; this has no jump where a required time becomes infinite.
+    """
+    real = {one: realise(one.scenario, draws) for one in (lead, other)}
+    signal = {one: real[one].factor * one.target.at(draws) for one in (lead, other)}
+    size = {one: counted(one.rule, signal[one]) for one in (lead, other)}
+    at = required_wall_time(real[other], other.rule, signal[other])
+    ahead = excess(size[lead], needed_at(real[lead], lead.rule, at))
+    lacking = [excess(needed_at(real[one], one.rule, np.asarray(np.inf)), size[one]) for one in (lead, other)]
+    neither = np.minimum(*lacking)
+    same = np.where((np.abs(ahead) <= SAME) & np.isfinite(at), 1.0, -1.0)
+    margins = [np.asarray(one) for one in np.broadcast_arrays(np.where(same > 0, -SAME, ahead), neither, same)]
+    return [one > 0 for one in margins], margins
 
 
 def _number(values: Array) -> float:
