@@ -77,7 +77,8 @@ def fitted(law: Law, bounds: Bounds, text: str) -> tuple[Law, float]:
         tail, part = ("below", below) if below >= above else ("above", above)
         end = bounds.lower if below >= above else bounds.upper
         raise QuantityError(
-            f'{100 * part:.2g} % of "{text}" lie {tail} {digits(end)}', f"a value {bounds.text()} is needed; {better(law, bounds)}"
+            f'{100 * part:.2g} % of "{text}" lie {tail} {digits(end)}',
+            f"a value {bounds.text()} is needed; {better(law, bounds)}",
         )
     return (law, 0.0) if below + above < NOTHING else (cut, below + above)
 

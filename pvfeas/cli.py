@@ -34,7 +34,9 @@ class Lazy(click.Group):
             return None
         return getattr(import_module(f"pvfeas.commands.{cmd_name}"), "command")  # type: ignore[no-any-return]  # noqa: B009
 
-    def resolve_command(self, ctx: click.Context, args: list[str]) -> tuple[str | None, click.Command | None, list[str]]:
+    def resolve_command(
+        self, ctx: click.Context, args: list[str]
+    ) -> tuple[str | None, click.Command | None, list[str]]:
         """As click does, with a suggestion for a name that is not known."""
         if args and args[0] not in COMMANDS and not args[0].startswith("-"):
             from pvfeas.suggestions import did_you_mean
@@ -89,5 +91,7 @@ def run(arguments: list[str]) -> int:
     except Exception as bug:
         if "--debug" in arguments:
             raise
-        click.echo(f"pvfeas has a bug: {type(bug).__name__}: {bug}\nplease report it; pvfeas --debug … shows where", err=True)
+        click.echo(
+            f"pvfeas has a bug: {type(bug).__name__}: {bug}\nplease report it; pvfeas --debug … shows where", err=True
+        )
         return 1

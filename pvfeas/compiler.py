@@ -87,7 +87,9 @@ class Compiler:
     def complain(self, written: Written, found: str, right: str, key: str = "") -> None:
         """A fault at the quantity's own place, or at a key inside it."""
         line = self.faults.line_inside(written.address, key, written.line) if key else written.line
-        self.faults.add(line, f"{written.address}.{key}" if key else written.address, found, right, written.file or None)
+        self.faults.add(
+            line, f"{written.address}.{key}" if key else written.address, found, right, written.file or None
+        )
 
     # expressions
 
@@ -119,7 +121,9 @@ class Compiler:
             under = self.whole(scale.from_, f"{here}.from", written, way)
             self.same_dimension(scale.with_, scale.from_, written, f"scale[{place}].from")
             ratio = Expression(powers=((over, Expression(1.0)), (under, Expression(-1.0))))
-            made = made.times(Expression(powers=((ratio, self.whole(scale.exponent, f"{here}.exponent", written, way)),)))
+            made = made.times(
+                Expression(powers=((ratio, self.whole(scale.exponent, f"{here}.exponent", written, way)),))
+            )
         return made
 
     def same_dimension(self, one: Quantity, other: Quantity, written: Written, key: str) -> None:
@@ -136,7 +140,10 @@ class Compiler:
             target = self.places.find(quantity.reference)
             if target is None:
                 names = self.places.names()
-                hint = did_you_mean(quantity.reference, names) or "name a key of [shared], or an address such as beam.line.fwhm"
+                hint = (
+                    did_you_mean(quantity.reference, names)
+                    or "name a key of [shared], or an address such as beam.line.fwhm"
+                )
                 self.complain(written, f'"@{quantity.reference}" refers to nothing', hint, inside(address, written))
                 return Expression()
             return self.expression(target, way)
@@ -191,7 +198,9 @@ class Compiler:
             return Expression(2.0).times(self.field(line["hwhm"], HWHM))
         if self.faults.found:  # the width may be what is wrong
             return Expression()
-        self.complain(written, "FWHM without a width of the line", 'give line = { fwhm = "…" }, or write the distance in Hz')
+        self.complain(
+            written, "FWHM without a width of the line", 'give line = { fwhm = "…" }, or write the distance in Hz'
+        )
         return Expression()
 
     def template(self, part: type, table: Table, scenario: Scenario, options: Mapping[str, Any] | None = None) -> Any:
@@ -235,7 +244,9 @@ class Compiler:
         made = self.field(one.splitting, SPLITTING)
         if one.splitting.quantity.relative:
             if "frequency" not in line.quantities:
-                self.complain(one.splitting, "a relative splitting without a frequency", 'give line = { frequency = "…" }')
+                self.complain(
+                    one.splitting, "a relative splitting without a frequency", 'give line = { frequency = "…" }'
+                )
             else:
                 made = made.times(line.quantities["frequency"])
         return made if one.splitting_of == "difference" else Expression(2.0).times(made)
@@ -275,7 +286,9 @@ class Compiler:
             strata *= len(names)
         if strata > MOST_STRATA:
             where = next(written for quantity, written in self.sources.values() if quantity.members)
-            self.complain(where, f"{strata} combinations of calculations", f"at most {MOST_STRATA}: tie the ensembles by group")
+            self.complain(
+                where, f"{strata} combinations of calculations", f"at most {MOST_STRATA}: tie the ensembles by group"
+            )
         return found
 
     def law_of(
@@ -293,7 +306,12 @@ class Compiler:
             what = "members" if known[0] != names else "weights"
             names_ = f" ({', '.join(names)})" if what == "members" else ""
             key = "weights" if what == "weights" and "weights" in quantity.written else "values"
-            self.complain(written, f"group {group!r} with other {what}{names_} than in {known[2]}", f"tied ensembles share names, order and weights: {', '.join(known[0])}", key)
+            self.complain(
+                written,
+                f"group {group!r} with other {what}{names_} than in {known[2]}",
+                f"tied ensembles share names, order and weights: {', '.join(known[0])}",
+                key,
+            )
             return None
         laws = []
         for _, member in quantity.members:
@@ -310,7 +328,9 @@ class Compiler:
             self.faults.add(written.line, address, error.found, error.wanted, written.file or None)
             return None
         if cut > WARNED:
-            self.warn("truncated", address, f'{100 * cut:.2g} % of "{text}" lie beyond what is possible and were cut away')
+            self.warn(
+                "truncated", address, f'{100 * cut:.2g} % of "{text}" lie beyond what is possible and were cut away'
+            )
         return inside
 
     def warn(self, code: str, address: str, message: str) -> None:

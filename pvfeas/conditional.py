@@ -15,14 +15,18 @@ from functools import cached_property
 from typing import Protocol
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy import special
 
 from pvfeas.laws import Array, Law
 
+Booleans = NDArray[np.bool_]
+Integers = NDArray[np.int64]
+Index = tuple[Integers, ...]
 Interval = tuple[Array, Array]  # open (lower, upper) in Hz, ends may be infinite
 
 NODES: Array = np.arange(-6.5, 6.5001, 0.5)
-AROUND: Array = np.arange(-2, 4)[:, None]  # the neighbours of an interval between nodes
+AROUND: Integers = np.arange(-2, 4)[:, None]  # the neighbours of an interval between nodes
 
 
 class Pivot(Protocol):
@@ -140,14 +144,16 @@ class NodePivot:
 
     def probability(self, intervals: Sequence[Interval]) -> Array:
         """Normal probability of the scores at which the signal lies in an interval; the node axis is gone."""
-        inside: Array = np.zeros((), dtype=bool)
+        inside: Booleans = np.zeros((), dtype=bool)
         for lower, upper in intervals:
             inside = inside | ((self.signal > lower) & (self.signal < upper))
 
         def margin(at: Index) -> Array:
             signal = _at(self.signal, inside.shape, at)
             ends = [(_at(lower, inside.shape, at), _at(upper, inside.shape, at)) for lower, upper in intervals]
-            return np.max([np.minimum(excess(signal, low), excess(high, signal)) for low, high in ends], axis=0)
+            return np.asarray(
+                np.max([np.minimum(excess(signal, low), excess(high, signal)) for low, high in ends], axis=0)
+            )
 
         return along_nodes(inside, margin, self.axis)
 
@@ -169,9 +175,6 @@ class NodeValues:
         return along_nodes(inside, margin, self.axis)
 
 
-Index = tuple[Array, ...]
-
-
 def _at(values: Array, shape: tuple[int, ...], at: Index) -> Array:
     return np.asarray(np.broadcast_to(values, shape)[at])
 
@@ -187,7 +190,7 @@ def excess(first: Array, second: Array) -> Array:
     return np.asarray(np.where(np.isnan(ratio), np.where(first > second, 1.0, -1.0), ratio))
 
 
-def along_nodes(inside: Array, margin: Callable[[Index], Array], axis: int) -> Array:
+def along_nodes(inside: Booleans, margin: Callable[[Index], Array], axis: int) -> Array:
     """Probability of the scores for which something is inside, known at NODES along one axis, which goes.
 
     margin: how far inside, at any index, positive where inside. Between two nodes of different kind
@@ -198,7 +201,7 @@ def along_nodes(inside: Array, margin: Callable[[Index], Array], axis: int) -> A
     if inside.shape[axis] == 1:  # the pivot makes no difference here
         return np.asarray(np.take(inside, 0, axis), dtype=float)
     front = np.moveaxis(inside, axis, 0)
-    total = front[0].astype(float)
+    total: Array = front[0].astype(float)
     found = np.nonzero(front[1:] != front[:-1])
     if not found[0].size:
         return total
@@ -214,7 +217,7 @@ def along_nodes(inside: Array, margin: Callable[[Index], Array], axis: int) -> A
     return np.asarray(np.clip(total, 0.0, 1.0))
 
 
-def _slope(k: Array, far_left: Array, left: Array, right: Array, far_right: Array) -> Array:
+def _slope(k: Integers, far_left: Array, left: Array, right: Array, far_right: Array) -> Array:
     """Slope per node at node k from its neighbours; an end of NODES is its own neighbour."""
     last = len(NODES) - 1
     three = (right - left) / np.where((k == 0) | (k == last), 1.0, 2.0)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
@@ -28,7 +28,12 @@ def checked_correlations(
             continue
         pair = (str(ends[0]), str(ends[1]))
         if pair[0] == pair[1]:
-            _say(faults, one, f"{one.between[0]} and {one.between[1]} are the same input", "correlate two different inputs")
+            _say(
+                faults,
+                one,
+                f"{one.between[0]} and {one.between[1]} are the same input",
+                "correlate two different inputs",
+            )
         elif frozenset(pair) in found:
             _say(faults, one, f"{pair[0]} and {pair[1]} are correlated twice", "give each pair once")
         else:
@@ -36,9 +41,16 @@ def checked_correlations(
     kept = tuple(found.values())
     broken = impossible_set(kept)
     if broken:
-        last = next(c for c in reversed(study.correlation) if set(c.between) <= set(broken) | ends_of(c, broken, places))
+        last = next(
+            c for c in reversed(study.correlation) if set(c.between) <= set(broken) | ends_of(c, broken, places)
+        )
         names = ", ".join(broken)
-        _say(faults, last, f"the correlations of {names} cannot all hold", "the matrix is not positive semi-definite: weaken one of them")
+        _say(
+            faults,
+            last,
+            f"the correlations of {names} cannot all hold",
+            "the matrix is not positive semi-definite: weaken one of them",
+        )
     return kept
 
 
@@ -58,7 +70,7 @@ def _say(faults: Faults, one: Correlated, found: str, wanted: str) -> None:
     faults.add(one.line, f"correlation[{one.place}].between", found, wanted)
 
 
-def _input_of(name: str, one: Correlated, laws: dict[str, object], places: Places, faults: Faults) -> str | None:
+def _input_of(name: str, one: Correlated, laws: Mapping[str, object], places: Places, faults: Faults) -> str | None:
     written = places.find(name)
     address = name if name in laws else written.address if written is not None else ""
     while written is not None and written.quantity.reference and address not in laws:
@@ -66,7 +78,12 @@ def _input_of(name: str, one: Correlated, laws: dict[str, object], places: Place
         address = written.address if written is not None else ""
     if address not in laws:
         if written is None:
-            _say(faults, one, f"{name!r} is no input", did_you_mean(name, list(laws)) or "name the address of an uncertain input")
+            _say(
+                faults,
+                one,
+                f"{name!r} is no input",
+                did_you_mean(name, list(laws)) or "name the address of an uncertain input",
+            )
         return None
     law = laws[address]
     if isinstance(law, Ensemble):

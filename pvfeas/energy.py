@@ -77,7 +77,9 @@ def convert(text: str, to: str, digits: int = 18) -> Converted:
                 hertz, spread = mpmath.mpf(law.value), mpmath.mpf(0)
             else:
                 what = "a factor" if isinstance(law, Lognormal) else "a range"
-                raise QuantityError(f'"{text}" has {what} for a spread', "convert a value, or a value ± its uncertainty")
+                raise QuantityError(
+                    f'"{text}" has {what} for a spread', "convert a value, or a value ± its uncertainty"
+                )
             units = ("", to)
         if any(one in ("E_h", "Eh", "hartree") for one in units) and tidy(units[0]) != tidy(to):
             value, sd = HARTREE_HZ["2022"]
@@ -108,7 +110,9 @@ def doppler_energy(energy: str, velocity: float) -> float:
         match = SINGLE.fullmatch(tidy(energy))
         if match is None:
             raise QuantityError(f'"{energy}"', "an exact energy is needed")
-        return float(mpmath.mpf(match["value"]) * factor(match["unit"]) * mpmath.mpf(velocity) / mpmath.mpf(str(SPEED_OF_LIGHT)))
+        return float(
+            mpmath.mpf(match["value"]) * factor(match["unit"]) * mpmath.mpf(velocity) / mpmath.mpf(str(SPEED_OF_LIGHT))
+        )
 
 
 def number_density(pressure: float, temperature: float) -> float:

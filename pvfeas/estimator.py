@@ -48,7 +48,9 @@ class Estimator:
         """The same with one member of one ensemble group alone."""
         axis = group - len(self.sample.groups) - 2
         weights = tuple((1.0,) if i == group else one for i, one in enumerate(self.sample.weights))
-        pivot = self.pivot.only(axis, member) if isinstance(self.pivot, LawPivot) else restricted(self.pivot, axis, member)
+        pivot = (
+            self.pivot.only(axis, member) if isinstance(self.pivot, LawPivot) else restricted(self.pivot, axis, member)
+        )
         return Estimator(
             self.rule, replace(self.sample, draws={}, scores={}, weights=weights),
             restricted(self.realisation, axis, member), pivot, self.noise, self.extra,

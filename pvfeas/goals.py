@@ -24,7 +24,12 @@ NEEDED = {
     "measure": ("relative_uncertainty",),
     "exclude": (),
 }
-ONLY = {"limit": ("exclude",), "relative_uncertainty": ("measure",), "trials": ("detect", "sign"), "looks": ("detect", "sign")}
+ONLY = {
+    "limit": ("exclude",),
+    "relative_uncertainty": ("measure",),
+    "trials": ("detect", "sign"),
+    "looks": ("detect", "sign"),
+}
 EXAMPLES = {"significance": "5", "power": "0.9", "relative_uncertainty": "0.2"}
 
 

@@ -138,8 +138,15 @@ def effective(trees: Mapping[str, Tree], raw: Mapping[str, Any], complain: Compl
         content = raw[name] if isinstance(raw[name], dict) else {}
         nodes = tree.nodes
         if tree.parent in way or tree.parent == name:
-            loop = " -> ".join([*way[way.index(tree.parent) :], name, tree.parent] if tree.parent in way else [name, name])
-            complain(("scenario", name, "based_on"), f"{name}.based_on", f"a circle: {loop}", "based_on must end at a scenario of its own")
+            loop = " -> ".join(
+                [*way[way.index(tree.parent) :], name, tree.parent] if tree.parent in way else [name, name]
+            )
+            complain(
+                ("scenario", name, "based_on"),
+                f"{name}.based_on",
+                f"a circle: {loop}",
+                "based_on must end at a scenario of its own",
+            )
             for member in way:
                 done.setdefault(member, trees[member])
         elif tree.parent in trees:
@@ -147,7 +154,9 @@ def effective(trees: Mapping[str, Tree], raw: Mapping[str, Any], complain: Compl
             for entry in missing:
                 known = list(entries_of(visit(tree.parent, (*way, name)).nodes))
                 hint = did_you_mean(entry, known) or f"{tree.parent} has no such entry"
-                complain(("scenario", name, "without"), f"{name}.without", f"{entry!r} is not there to be dropped", hint)
+                complain(
+                    ("scenario", name, "without"), f"{name}.without", f"{entry!r} is not there to be dropped", hint
+                )
             nodes = merge(inherited, tree.nodes)
         done[name] = replace(tree, nodes=nodes)
         return done[name]

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
-from typing import Literal
+from typing import Any, Literal
 
 import numpy as np
 from scipy import special
@@ -16,7 +16,7 @@ from pvfeas.estimator import Estimator
 from pvfeas.laws import Array
 from pvfeas.nominal import stepped_draws
 from pvfeas.points import Sample, correlation_root, uncertain_addresses, uniforms
-from pvfeas.problem import Draws, Ensemble, Expression, Problem, ScenarioProblem
+from pvfeas.problem import Draws, Ensemble, Expression, Problem, ScenarioProblem, Template
 from pvfeas.realisation import Realisation, realise
 
 LEAST_SHARE = 0.1  # of the variance, below which the splitting is not worth integrating
@@ -32,7 +32,7 @@ class Choice:
 
 def others_of(scenario: ScenarioProblem) -> set[str]:
     """Every input that acts on something else than the splitting's plain factors."""
-    templates = (
+    templates: tuple[Template[Any], ...] = (
         scenario.line, scenario.technique_a, scenario.technique_b, scenario.switching, scenario.samples_a,
         scenario.samples_b, scenario.schedule, *scenario.systematics,
     )  # fmt: skip

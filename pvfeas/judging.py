@@ -54,13 +54,21 @@ def product_limits(problem: Problem, maker: Compiler, faults: Faults) -> dict[Ex
             continue
         outside = float(sample.average(((values < key.lower) | (values > key.upper)).astype(float)).mean())
         if outside > REFUSED:
-            maker.complain(written, f"{100 * outside:.2g} % of the product lie beyond its bounds", "a smaller spread, or laws of one sign, are needed")
+            maker.complain(
+                written,
+                f"{100 * outside:.2g} % of the product lie beyond its bounds",
+                "a smaller spread, or laws of one sign, are needed",
+            )
         elif outside > 0.0:
             small = 1e-9 * float(np.abs(values).max())
             low = key.lower + (small if key.lower_open else 0.0)
             found[expression] = (low, key.upper - (small if key.upper_open else 0.0))
             if outside > WARNED:
-                maker.warn("truncated", address, f"{100 * outside:.2g} % of the product lie beyond what is possible and were cut away")
+                maker.warn(
+                    "truncated",
+                    address,
+                    f"{100 * outside:.2g} % of the product lie beyond what is possible and were cut away",
+                )
     return found
 
 
@@ -93,9 +101,16 @@ def systematics_fit(study: Study, one: ScenarioProblem, written: Scenario, fault
         if on == "width" and technique.kind == "quoted" and "fwhm" not in one.line.quantities:
             faults.add(size.line, address, 'on = "width" without a width', 'give line = { fwhm = "…" }')
         if on == "scale" and study.goal.get("kind") != "measure":
-            faults.add(size.line, address, 'on = "scale" in a goal that does not measure', 'it belongs to kind = "measure": drop the entry')
+            faults.add(
+                size.line,
+                address,
+                'on = "scale" in a goal that does not measure',
+                'it belongs to kind = "measure": drop the entry',
+            )
         if on == "signal":
-            faults.add(size.line, address, 'on = "signal" for a technique that sees Hz', "give the size in Hz and drop on")
+            faults.add(
+                size.line, address, 'on = "signal" for a technique that sees Hz', "give the size in Hz and drop on"
+            )
 
 
 def unresolved(one: ScenarioProblem, written: Scenario, nominal: Draws, maker: Compiler) -> None:
@@ -113,13 +128,21 @@ def unresolved(one: ScenarioProblem, written: Scenario, nominal: Draws, maker: C
             "above one half the two lines are resolved, and the difference of two centres is not what limits",
         )  # fmt: skip
     elif ratio > DOUBTFUL:
-        maker.warn("nearly resolved", written.splitting.address, f"the splitting is {ratio:.2g} of the width: the purity factor holds for unresolved lines")
+        maker.warn(
+            "nearly resolved",
+            written.splitting.address,
+            f"the splitting is {ratio:.2g} of the width: the purity factor holds for unresolved lines",
+        )
 
 
 def signless(problem: Problem, one: ScenarioProblem, written: Scenario, nominal: Draws, maker: Compiler) -> None:
     """One side means that the sign is predicted: that of the splitting's median."""
     if problem.goal.sides == 1 and float(np.reshape(one.splitting.at(nominal), -1)[0]) == 0.0:
-        maker.complain(written.splitting, "sides = 1 with a splitting whose median is zero", "a predicted sign is needed, or sides = 2")
+        maker.complain(
+            written.splitting,
+            "sides = 1 with a splitting whose median is zero",
+            "a predicted sign is needed, or sides = 2",
+        )
 
 
 def absent(one: ScenarioProblem, maker: Compiler) -> None:
@@ -134,8 +157,16 @@ def plausible(one: ScenarioProblem, written: Scenario, nominal: Draws, maker: Co
     """Slips between mHz and MHz."""
     splitting = float(np.abs(np.reshape(one.splitting.at(nominal), -1)[0]))
     if splitting > 1e6:
-        maker.warn("plausibility", written.splitting.address, f"a splitting of {value_text(splitting, 'Hz')} is far above every prediction: MHz for mHz?")
+        maker.warn(
+            "plausibility",
+            written.splitting.address,
+            f"a splitting of {value_text(splitting, 'Hz')} is far above every prediction: MHz for mHz?",
+        )
     frequency = one.line.at(nominal).frequency
     if frequency is not None and float(np.reshape(frequency, -1)[0]) < 1e6:
         shown = value_text(float(np.reshape(frequency, -1)[0]), "Hz")
-        maker.warn("plausibility", written.line.quantities["frequency"].address, f"a line at {shown} is unusually low: mHz for MHz?")
+        maker.warn(
+            "plausibility",
+            written.line.quantities["frequency"].address,
+            f"a line at {shown} is unusually low: mHz for MHz?",
+        )

@@ -86,7 +86,15 @@ def flag(meaning: str, default: bool = False) -> Any:
     return field(default=default, metadata={"key": Key("flag", meaning, default=default)})
 
 
-def integer(meaning: str, *, lower: int, upper: int = 10**9, default: int | None = None, required: bool = False, example: str = "") -> Any:
+def integer(
+    meaning: str,
+    *,
+    lower: int,
+    upper: int = 10**9,
+    default: int | None = None,
+    required: bool = False,
+    example: str = "",
+) -> Any:
     """Declare a whole number."""
     key = Key("integer", meaning, lower=lower, upper=upper, default=default, required=required, example=example)
     return field(default=default, metadata={"key": key})

@@ -61,7 +61,7 @@ class _Scored:
 
     def quantile(self, probability: ArrayLike) -> Array:
         """The value below which the given probability lies."""
-        return self.from_score(special.ndtri(probability))
+        return self.from_score(special.ndtri(np.asarray(probability, dtype=float)))
 
     def below(self, value: ArrayLike) -> Array:
         """P(x < value)."""
@@ -77,7 +77,7 @@ class _Uniformed(_Scored):
 
     def from_score(self, score: ArrayLike) -> Array:
         """The value at standard normal score z."""
-        return self.quantile(special.ndtr(score))
+        return self.quantile(special.ndtr(np.asarray(score, dtype=float)))
 
     def score(self, value: ArrayLike) -> Array:
         """The score of a value, infinite outside the support; the nearer tail decides."""
@@ -281,7 +281,9 @@ class Beta(_Uniformed):
     def quantile(self, probability: ArrayLike) -> Array:
         """Inverse of the regularised incomplete beta function."""
         a, b = self.shapes()
-        return np.asarray(self.lower + (self.upper - self.lower) * special.betaincinv(a, b, probability))
+        return np.asarray(
+            self.lower + (self.upper - self.lower) * special.betaincinv(a, b, np.asarray(probability, dtype=float))
+        )
 
     def from_score(self, score: ArrayLike) -> Array:
         """The value at standard normal score z, from a table that is exact to 1e-10 of the range."""

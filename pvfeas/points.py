@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 
 import numpy as np
@@ -60,6 +60,19 @@ class Sample:
     groups: tuple[str, ...]
     weights: tuple[tuple[float, ...], ...]
     shape: tuple[int, int]  # replicates, points
+
+    def thinned(self, exponent: int) -> Sample:
+        """The sample of 2^exponent times fewer points: every so many points of a lattice are a lattice."""
+        step = 2**exponent
+
+        def every(values: Array) -> Array:
+            return np.ascontiguousarray(values[..., ::step]) if values.ndim and values.shape[-1] > 1 else values
+
+        return replace(
+            self, draws={name: every(one) for name, one in self.draws.items()},
+            scores={name: every(one) for name, one in self.scores.items()},
+            shape=(self.shape[0], self.shape[1] // step),
+        )  # fmt: skip
 
     def average(self, values: Array) -> Array:
         """Mean over the points and, weighted, over the members of every group.

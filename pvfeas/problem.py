@@ -77,9 +77,7 @@ class Expression:
 
     def times(self, other: Expression) -> Expression:
         """The product with another expression."""
-        return Expression(
-            self.constant * other.constant, self.inputs + other.inputs, self.powers + other.powers
-        )
+        return Expression(self.constant * other.constant, self.inputs + other.inputs, self.powers + other.powers)
 
 
 @dataclass(frozen=True)

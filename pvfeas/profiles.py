@@ -74,8 +74,6 @@ class Profile:
 
 
 PROFILES: dict[str, Profile] = {
-    "lorentzian": Profile(
-        "lorentzian", lorentzian, lorentzian_slope, lorentzian_slope_from, lorentzian_partner
-    ),
+    "lorentzian": Profile("lorentzian", lorentzian, lorentzian_slope, lorentzian_slope_from, lorentzian_partner),
     "gaussian": Profile("gaussian", gaussian, gaussian_slope, gaussian_slope_from, gaussian_partner),
 }

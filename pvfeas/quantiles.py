@@ -34,7 +34,8 @@ def solve(
     """Quantiles of the pooled distribution and their errors from the spread of the replicates.
 
     starts: first guesses of the quantiles, any positive values; spread: a guess of the standard deviation of
-    ln x, 0 where there is none. Bracketed secant steps in ln x on P - p, all quantiles at once; the error of ln x is that of P at the quantile over the density there.
+    ln x, 0 where there is none. Bracketed secant steps in ln x on P - p, all quantiles at once; the error of
+    ln x is that of P at the quantile over the density there.
     """
     wanted = np.asarray(probabilities, dtype=float)
     reachable = distribution(np.array([np.exp(HIGHEST)]))[0]
@@ -56,7 +57,9 @@ def _roots(distribution: Distribution, wanted: Array, x: Array, spread: float) -
     """ln x with P = wanted, the density there, and P of every replicate there."""
     low, high = np.full_like(x, LOWEST), np.full_like(x, HIGHEST)
     step = 0.02
-    density = np.exp(-0.5 * special.ndtri(wanted) ** 2) / (spread * np.sqrt(2.0 * np.pi)) if spread > 0 else np.zeros_like(x)
+    density = (
+        np.exp(-0.5 * special.ndtri(wanted) ** 2) / (spread * np.sqrt(2.0 * np.pi)) if spread > 0 else np.zeros_like(x)
+    )
     told = np.zeros(x.shape, dtype=bool)  # whether the density is more than a guess
     replicates = distribution(np.exp(x))
     pooled = replicates.mean(axis=-1)
@@ -99,7 +102,9 @@ def of_values(values: Array, weights: Array, probabilities: Sequence[float]) -> 
     """
     pooled = _inverted(values.ravel(), weights.ravel(), probabilities)
     single = np.array([_inverted(values[:, r], weights[:, r], probabilities) for r in range(values.shape[1])])
-    errors = [float(half_width(single[:, i])) if np.all(np.isfinite(single[:, i])) else np.inf for i in range(len(pooled))]
+    errors = [
+        float(half_width(single[:, i])) if np.all(np.isfinite(single[:, i])) else np.inf for i in range(len(pooled))
+    ]
     return pooled, errors
 
 

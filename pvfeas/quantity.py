@@ -25,9 +25,7 @@ BRACKET = re.compile(rf"(?P<number>{NUMBER})\((?P<spread>\d+\.?\d*|\.\d+)\)(?P<e
 PLUS_MINUS = re.compile(
     rf"(?P<value>{VALUE})\s*(?P<unit>{UNIT})\s*(?:±|\+/-|\+-)\s*(?P<spread>{VALUE})\s*(?P<other>{UNIT})"
 )
-TWO_PIECE = re.compile(
-    rf"(?P<value>{VALUE})\s*\+\s*(?P<plus>{VALUE})\s*/\s*-\s*(?P<minus>{VALUE})\s*(?P<unit>{UNIT})"
-)
+TWO_PIECE = re.compile(rf"(?P<value>{VALUE})\s*\+\s*(?P<plus>{VALUE})\s*/\s*-\s*(?P<minus>{VALUE})\s*(?P<unit>{UNIT})")
 FACTOR = re.compile(rf"(?P<value>{VALUE})\s*(?P<unit>{UNIT})\s*(?:×/|x/|\*/)\s*(?P<factor>{VALUE})")
 RANGE = re.compile(
     rf"(?P<low>{VALUE})\s*(?P<first>{UNIT})\s*\.\.\s*(?P<high>{VALUE})\s*(?P<unit>{UNIT})(?P<log>\s+log)?"
@@ -210,7 +208,9 @@ def _factor(match: re.Match[str], canonical: Canonical) -> Read:
     if value == 0.0:
         raise QuantityError(f'"{match[0]}" spreads zero by a factor', "a factor needs a median other than zero")
     if spread <= 1.0:
-        raise QuantityError(f'the factor {match["factor"]} in "{match[0]}"', "a factor above 1 is needed, such as ×/ 1.5")
+        raise QuantityError(
+            f'the factor {match["factor"]} in "{match[0]}"', "a factor above 1 is needed, such as ×/ 1.5"
+        )
     return Lognormal(value * factor, spread), along, dimension
 
 

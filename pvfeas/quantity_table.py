@@ -1,4 +1,4 @@
-"""A quantity written as a table: value with source and status, percentiles, products, scales, ensembles, differences."""
+"""A quantity written as a table: value with source and status, percentiles, products, scales, ensembles."""
 
 from __future__ import annotations
 
@@ -15,7 +15,16 @@ from pvfeas.suggestions import did_you_mean
 from pvfeas.units import TABLES, tidy
 
 STATUSES = ("measured", "demonstrated", "extrapolated", "assumed")
-PERCENTILES = {"p025": 0.025, "p05": 0.05, "p10": 0.10, "p16": 0.16, "p84": 0.84, "p90": 0.90, "p95": 0.95, "p975": 0.975}
+PERCENTILES = {
+    "p025": 0.025,
+    "p05": 0.05,
+    "p10": 0.10,
+    "p16": 0.16,
+    "p84": 0.84,
+    "p90": 0.90,
+    "p95": 0.95,
+    "p975": 0.975,
+}
 PAIRS = (("p05", "p95"), ("p16", "p84"), ("p10", "p90"), ("p025", "p975"))
 TEXTS = ("source", "note", "status", "group")
 KEYS = (
@@ -35,11 +44,17 @@ def parse_table(table: dict[str, Any], canonical: Canonical, splitting: bool = F
     allowed = (*KEYS, "of") if splitting else KEYS
     for key in table:
         if key not in allowed:
-            raise QuantityError(f"the key {key!r} is not known here", did_you_mean(key, allowed) or f"known keys are {', '.join(allowed)}", key)
+            raise QuantityError(
+                f"the key {key!r} is not known here",
+                did_you_mean(key, allowed) or f"known keys are {', '.join(allowed)}",
+                key,
+            )
     _texts(table)
     relative = _flag(table)
     if relative and not splitting:
-        raise QuantityError("relative on what is no splitting", "drop it: only a splitting is a fraction of the frequency", "relative")
+        raise QuantityError(
+            "relative on what is no splitting", "drop it: only a splitting is a fraction of the frequency", "relative"
+        )
     inner = Canonical("*") if "times" in table else Canonical("1") if relative else canonical
     starts = [k for k in ("value", "values", "difference") if k in table] + [k for k in table if k in PERCENTILES][:1]
     if len(starts) != 1:
@@ -64,7 +79,11 @@ def _texts(table: dict[str, Any]) -> None:
             raise QuantityError(f"{_short(table[key])} is no text", "a text in quotes is needed", key)
     status = table.get("status")
     if status is not None and status not in STATUSES:
-        raise QuantityError(f"{status!r} is no status", did_you_mean(status, STATUSES) or f"one of {', '.join(STATUSES)} is needed", "status")
+        raise QuantityError(
+            f"{status!r} is no status",
+            did_you_mean(status, STATUSES) or f"one of {', '.join(STATUSES)} is needed",
+            "status",
+        )
     if "group" in table and "values" not in table:
         raise QuantityError("group without values", "group ties ensembles: give values = {…}")
     for key, partner in (("weights", "values"), ("discrepancy", "values"), ("law", None), ("unit", None)):
@@ -136,7 +155,9 @@ def _scale(entry: Any) -> Scale:
     parts = {"with": "*", "from": "*", "exponent": "1"}
     if not isinstance(entry, dict) or set(entry) != set(parts):
         given = ", ".join(entry) if isinstance(entry, dict) else _short(entry)
-        raise QuantityError(f"a scale of {given or 'nothing'}", 'a table {with = "@…", from = "…", exponent = "…"} is needed')
+        raise QuantityError(
+            f"a scale of {given or 'nothing'}", 'a table {with = "@…", from = "…", exponent = "…"} is needed'
+        )
     found = {}
     for name, unit in parts.items():
         try:
@@ -161,12 +182,16 @@ def _percentiles(table: dict[str, Any], canonical: Canonical) -> Quantity:
     given = {key for key in table if key in PERCENTILES}
     pair = next((pair for pair in PAIRS if set(pair) == given), None)
     if pair is None:
-        raise QuantityError(f"the percentiles {', '.join(sorted(given))}", "a pair is needed: p05 and p95, p16 and p84, …")
+        raise QuantityError(
+            f"the percentiles {', '.join(sorted(given))}", "a pair is needed: p05 and p95, p16 and p84, …"
+        )
     ends = []
     for key in pair:
         law = _value(table[key], table, canonical, key).law
         if not isinstance(law, Exact):
-            raise QuantityError(f"{_short(table[key])} is not exact", "an exact value is needed in a pair of percentiles", key)
+            raise QuantityError(
+                f"{_short(table[key])} is not exact", "an exact value is needed in a pair of percentiles", key
+            )
         ends.append(law.value)
     name = table.get("law", "lognormal" if ends[0] > 0 else "normal")
     if name not in ("normal", "lognormal"):
@@ -189,7 +214,9 @@ def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
     values = table["values"]
     if not isinstance(values, dict) or not values:
         found = "an empty table" if values == {} else f"{_short(values)} where a table by name belongs"
-        raise QuantityError(found, 'a table of calculations by name is needed: values = {HF = "…", B3LYP = "…"}', "values")
+        raise QuantityError(
+            found, 'a table of calculations by name is needed: values = {HF = "…", B3LYP = "…"}', "values"
+        )
     if len(values) > MOST_MEMBERS:
         raise QuantityError(f"{len(values)} members", f"at most {MOST_MEMBERS} are enumerated", "values")
     members = tuple((name, _value(one, table, canonical, f"values.{name}")) for name, one in values.items())
@@ -200,12 +227,20 @@ def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
     if isinstance(weights, list) and len(weights) == len(members):
         weights = dict(zip(values, weights, strict=True))
     if not isinstance(weights, dict) or (weights and set(weights) != set(values)):
-        found = f"{len(weights)} weights for {len(values)} members" if isinstance(weights, dict | list) else f"{_short(weights)} where a list belongs"
+        found = (
+            f"{len(weights)} weights for {len(values)} members"
+            if isinstance(weights, dict | list)
+            else f"{_short(weights)} where a list belongs"
+        )
         raise QuantityError(found, "one weight for each member is needed, in order or by name", "weights")
     numbers = [weights.get(name, 1.0) for name in values]
     for weight in numbers:
         if isinstance(weight, bool) or not isinstance(weight, int | float) or not 0 < weight < 1e12:
-            raise QuantityError(f"the weight {_short(weight)} is not a positive number", "weights are positive; they need not add to 1", "weights")
+            raise QuantityError(
+                f"the weight {_short(weight)} is not a positive number",
+                "weights are positive; they need not add to 1",
+                "weights",
+            )
     total = float(sum(numbers))
     return Quantity(table, members=members, weights=tuple(float(w) / total for w in numbers))
 
@@ -214,7 +249,9 @@ def _difference(table: dict[str, Any], canonical: Canonical) -> Quantity:
     """Two absolute values subtracted at full precision (mpmath), in the canonical unit."""
     pair = table["difference"]
     if not isinstance(pair, list) or len(pair) != 2 or not all(isinstance(one, str) for one in pair):
-        raise QuantityError("not two texts", 'two absolute values are needed: difference = ["… cm^-1", "… cm^-1"]', "difference")
+        raise QuantityError(
+            "not two texts", 'two absolute values are needed: difference = ["… cm^-1", "… cm^-1"]', "difference"
+        )
     if canonical.unit not in TABLES:
         raise QuantityError("difference of a compound unit", "only frequencies and energies are subtracted")
     return Quantity(table, law=Exact(exact_difference(pair[0], pair[1], canonical.unit)))
@@ -232,5 +269,5 @@ def _exact(text: str, canonical: str) -> Any:
         raise QuantityError(f'"{text}" cannot be read', "an exact number with its unit is needed", "difference")
     factor = TABLES[canonical].get(match["unit"])
     if factor is None:
-        raise QuantityError(f'the unit {match["unit"]!r}', "a frequency or an energy is needed", "difference")
+        raise QuantityError(f"the unit {match['unit']!r}", "a frequency or an energy is needed", "difference")
     return mpmath.mpf(match["value"]) * mpmath.mpf(str(factor))

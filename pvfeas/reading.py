@@ -32,7 +32,9 @@ class Reader:
     def complain(self, leaf: Leaf, found: str, wanted_: str, key: str = "") -> None:
         """A fault at a leaf, or at a key inside it, reported where it was written."""
         line = self.faults.line_inside(leaf.address, key, leaf.line) if key and leaf.line else leaf.line
-        self.faults.add(line, f"{leaf.address}.{key}" if key not in ("", "value") else leaf.address, found, wanted_, leaf.file)
+        self.faults.add(
+            line, f"{leaf.address}.{key}" if key not in ("", "value") else leaf.address, found, wanted_, leaf.file
+        )
 
     def table(self, node: Any, table: str, kind: str, scenario: str, address: str, line: int, parent: Any) -> Table:
         """One table: unknown keys, wrong values, missing keys."""
@@ -71,7 +73,9 @@ class Reader:
             self.complain(first, f"the key {name!r} {LATER}", "drop it for now")
             return set()
         known = ", ".join(one for one in keys if one != "name")
-        self.complain(first, f"the key {name!r} is not known here", f"did you mean {near}?" if near else f"known keys are {known}")
+        self.complain(
+            first, f"the key {name!r} is not known here", f"did you mean {near}?" if near else f"known keys are {known}"
+        )
         return {near}
 
     def value(self, leaf: Leaf, key: Key) -> Any:
@@ -100,7 +104,9 @@ class Reader:
             if isinstance(value, bool) or not isinstance(value, int):
                 return self.complain(leaf, f"{_short(value)}", f"{SORTS['integer']} is needed")
             if not key.lower <= value <= key.upper:
-                return self.complain(leaf, f"{value}", f"a whole number from {key.lower:.0f} to {key.upper:.0f} is needed")
+                return self.complain(
+                    leaf, f"{value}", f"a whole number from {key.lower:.0f} to {key.upper:.0f} is needed"
+                )
             return value
         if key.sort == "flag":
             return value if isinstance(value, bool) else self.complain(leaf, _short(value), "true or false is needed")

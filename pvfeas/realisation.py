@@ -50,9 +50,7 @@ def realise(scenario: ScenarioProblem, draws: Draws, signal: Array | None = None
         technique_a=technique_a,
         technique_b=technique_b,
         samples_a=samples_a,
-        averaging=averaging_of(
-            technique_a, technique_b, line, switching, samples_a, samples_b, schedule, systematics
-        ),
+        averaging=averaging_of(technique_a, technique_b, line, switching, samples_a, samples_b, schedule, systematics),
         factor=factor,
         noise=splitting_noise(technique_a, technique_b, line, switching),
         known_to=np.asarray(known_to),

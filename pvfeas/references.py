@@ -108,5 +108,11 @@ def dimension_text(dimension: Dimension) -> str:
     """A dimension as people write it."""
     if not dimension:
         return "a plain number"
-    names = {"[time]": "time", "[length]": "length", "[mass]": "mass", "[temperature]": "temperature", "[substance]": "amount"}
+    names = {
+        "[time]": "time",
+        "[length]": "length",
+        "[mass]": "mass",
+        "[temperature]": "temperature",
+        "[substance]": "amount",
+    }
     return " ".join(names.get(name, name) + ("" if power == 1.0 else f"^{power:g}") for name, power in dimension)

@@ -119,5 +119,9 @@ def toml(value: Any) -> str:
     if isinstance(value, float):
         return repr(value)
     if isinstance(value, Mapping):
-        return "{ " + ", ".join(f"{word(str(key))} = {toml(inner)}" for key, inner in value.items()) + " }" if value else "{}"
+        return (
+            "{ " + ", ".join(f"{word(str(key))} = {toml(inner)}" for key, inner in value.items()) + " }"
+            if value
+            else "{}"
+        )
     return "[" + ", ".join(toml(inner) for inner in value) + "]"

@@ -51,7 +51,10 @@ def _near_miss(nodes: Node, wanted: str) -> bool:
 def _refuse_reference(nodes: Node, name: str, tree: Tree, reader: Reader) -> None:
     if "reference" in nodes:
         reader.faults.add(
-            tree.lines["reference"], f"{name}.reference", f"the table 'reference' {LATER}", "drop it for now: no reference noise"
+            tree.lines["reference"],
+            f"{name}.reference",
+            f"the table 'reference' {LATER}",
+            "drop it for now: no reference noise",
         )
 
 
@@ -80,7 +83,9 @@ def _splitting(leaf: Leaf, reader: Reader) -> tuple[Written, str] | None:
         if near:
             reader.complain(leaf, f"the key {near!r} is not known here", "did you mean of?", near)
         else:
-            reader.complain(leaf, "is missing", 'say of = "difference" (nu(a) - nu(b)) or of = "one enantiomer" (half of it)', "of")
+            reader.complain(
+                leaf, "is missing", 'say of = "difference" (nu(a) - nu(b)) or of = "one enantiomer" (half of it)', "of"
+            )
         return None
     if value["of"] not in OF:
         hint = did_you_mean(str(value["of"]), OF) or f"one of {', '.join(OF)} is needed"
@@ -90,9 +95,7 @@ def _splitting(leaf: Leaf, reader: Reader) -> tuple[Written, str] | None:
     return None if written is None else (written, str(value["of"]))
 
 
-def _technique(
-    node: Any, address: str, line: int, above: Node | None, reader: Reader, scenario: str
-) -> Table | None:
+def _technique(node: Any, address: str, line: int, above: Node | None, reader: Reader, scenario: str) -> Table | None:
     """The technique's table; rules of the technique itself are checked too."""
     if node is None:
         return None
@@ -107,7 +110,11 @@ def _technique(
     if same is not None:
         options = {key: leaf.value for key, leaf in same.items() if isinstance(leaf, Leaf)}
         before = {(key, found) for key, found, _ in TECHNIQUES[kind].rules({k: options.get(k, True) for k in same})}
-    absorbed = {suggest(one, TECHNIQUES[kind].__dataclass_fields__) for one in node if one not in TECHNIQUES[kind].__dataclass_fields__}
+    absorbed = {
+        suggest(one, TECHNIQUES[kind].__dataclass_fields__)
+        for one in node
+        if one not in TECHNIQUES[kind].__dataclass_fields__
+    }
     absorbed |= {other for group in ALTERNATIVES if group & absorbed for other in group}
     for key, found, right in TECHNIQUES[kind].rules(given):
         if (key, found) not in before and key not in absorbed:
@@ -126,7 +133,11 @@ def _systematics(node: Any, tree: Tree, own: Tree, above: Node | None, reader: R
     if node is None:
         return {}
     if isinstance(node, Leaf):
-        reader.complain(node, f"{_short(node.value)} where a table belongs", 'write [scenario.NAME.systematics] with entries name = { size = "…", … }')
+        reader.complain(
+            node,
+            f"{_short(node.value)} where a table belongs",
+            'write [scenario.NAME.systematics] with entries name = { size = "…", … }',
+        )
         return {}
     upper = above.get("systematics") if above else None
     found = {}
@@ -134,7 +145,9 @@ def _systematics(node: Any, tree: Tree, own: Tree, above: Node | None, reader: R
         address = f"{tree.name}.systematics.{name}"
         line = _line_of(entry, own.lines["systematics"])
         if isinstance(entry, Leaf):
-            reader.complain(entry, f"{_short(entry.value)} where a table belongs", 'write { size = "0.1 Hz", averages = "never" }')
+            reader.complain(
+                entry, f"{_short(entry.value)} where a table belongs", 'write { size = "0.1 Hz", averages = "never" }'
+            )
             continue
         if not NAME.fullmatch(name):
             reader.faults.add(line, address, f"{_short(name)} cannot name an entry", "use letters, digits, _ and -")
@@ -158,7 +171,9 @@ def _averages(table: Table, entry: Node, address: str, line: int, parent: Any, r
     how = table.options.get("averages")
     needed = {"per reset": "every", "as 1/t": "after", "grows": "after"}.get(how or "")
     if needed and needed not in entry and not _near(entry, needed):
-        reader.faults.add(line, f"{address}.{needed}", "is missing", f'averages = "{how}" needs it: write {needed} = "1 d"')
+        reader.faults.add(
+            line, f"{address}.{needed}", "is missing", f'averages = "{how}" needs it: write {needed} = "1 d"'
+        )
     for key, ways in (("every", ("per reset",)), ("after", ("as 1/t", "grows"))):
         if key in entry and how is not None and how not in ways:
             leaf = entry[key]
@@ -167,7 +182,11 @@ def _averages(table: Table, entry: Node, address: str, line: int, parent: Any, r
 
 
 def _near(entry: Node, wanted: str) -> bool:
-    return any(suggest(key, ("every", "after", "size", "averages", "of", "on", "group", "dof")) == wanted for key in entry if key != wanted)
+    return any(
+        suggest(key, ("every", "after", "size", "averages", "of", "on", "group", "dof")) == wanted
+        for key in entry
+        if key != wanted
+    )
 
 
 def _line_of(entry: Any, otherwise: int) -> int:
@@ -184,7 +203,9 @@ def _arm_b(nodes: Node, tree: Tree, own: Tree, reader: Reader) -> tuple[Table | 
         return None, None
     address, line = f"{tree.name}.arm_b", own.lines["arm_b"]
     if isinstance(node, Leaf):
-        reader.complain(node, f"{_short(node.value)} where a table belongs", "write arm_b = { technique = { … }, samples = { … } }")
+        reader.complain(
+            node, f"{_short(node.value)} where a table belongs", "write arm_b = { technique = { … }, samples = { … } }"
+        )
         return None, None
     technique = samples = None
     for key, value in node.items():
@@ -197,7 +218,14 @@ def _arm_b(nodes: Node, tree: Tree, own: Tree, reader: Reader) -> tuple[Table | 
             base = nodes.get("technique")
             merged = merge(base if isinstance(base, dict) else {}, value, "technique")
             same = base if isinstance(base, dict) and _kind_of(merged) == _kind_of(base) else None
-            technique = _technique(merged, f"{address}.technique", _line_of(value, line), {"technique": same} if same else None, reader, tree.name)
+            technique = _technique(
+                merged,
+                f"{address}.technique",
+                _line_of(value, line),
+                {"technique": same} if same else None,
+                reader,
+                tree.name,
+            )
         else:
             base = nodes.get("samples")
             merged = merge(base if isinstance(base, dict) else {}, value, "samples")
@@ -215,19 +243,55 @@ def _rules(
         part = TECHNIQUES[technique.kind]
         wide = {"fwhm", "hwhm"}
         written = tree.nodes.get("line")
-        has = isinstance(written, dict) and (wide & set(written) or any(suggest(k, wide | {"frequency", "profile"}) in wide for k in written if k not in ("frequency", "profile")))
-        inherits = above is not None and isinstance(above.get("technique"), dict) and _kind_of(above["technique"]) == technique.kind
+        has = isinstance(written, dict) and (
+            wide & set(written)
+            or any(
+                suggest(k, wide | {"frequency", "profile"}) in wide
+                for k in written
+                if k not in ("frequency", "profile")
+            )
+        )
+        inherits = (
+            above is not None
+            and isinstance(above.get("technique"), dict)
+            and _kind_of(above["technique"]) == technique.kind
+        )
         if part.needs_width and not has and not inherits:
-            reader.faults.add(line.line, f"{name}.line.fwhm", "is missing", f'a {technique.kind} needs the width: write line = {{ fwhm = "12(2) kHz" }}')
+            reader.faults.add(
+                line.line,
+                f"{name}.line.fwhm",
+                "is missing",
+                f'a {technique.kind} needs the width: write line = {{ fwhm = "12(2) kHz" }}',
+            )
         stated = technique.kind == "quoted" and technique.options.get("of", "splitting") == "splitting"
         if stated and technique_b is not None:
-            reader.faults.add(tree.lines["arm_b"], f"{name}.arm_b.technique", "an arm b for a quoted splitting", 'the uncertainty is that of both arms: drop it, or quote of = "one enantiomer"')
+            reader.faults.add(
+                tree.lines["arm_b"],
+                f"{name}.arm_b.technique",
+                "an arm b for a quoted splitting",
+                'the uncertainty is that of both arms: drop it, or quote of = "one enantiomer"',
+            )
     if line.written and {"fwhm", "hwhm"} <= set(line.quantities):
         hwhm = line.quantities["hwhm"]
         reader.faults.add(hwhm.line, hwhm.address, "both fwhm and hwhm", "give one of them", hwhm.file)
     samples = tables["samples"].quantities
     for one, other in (("mass", "consumption"), ("consumption", "mass")):
-        if one in samples and other not in samples and isinstance(tree.nodes.get("samples"), dict) and other not in tree.nodes["samples"]:
-            near = any(suggest(key, ("mass", "consumption", "ee_a", "ee_b")) == other for key in tree.nodes["samples"] if key not in samples)
+        if (
+            one in samples
+            and other not in samples
+            and isinstance(tree.nodes.get("samples"), dict)
+            and other not in tree.nodes["samples"]
+        ):
+            near = any(
+                suggest(key, ("mass", "consumption", "ee_a", "ee_b")) == other
+                for key in tree.nodes["samples"]
+                if key not in samples
+            )
             if not near:
-                reader.faults.add(samples[one].line, samples[one].address, f"{one} without {other}", "the supply needs both: mass and consumption per live time", samples[one].file)
+                reader.faults.add(
+                    samples[one].line,
+                    samples[one].address,
+                    f"{one} without {other}",
+                    "the supply needs both: mass and consumption per live time",
+                    samples[one].file,
+                )

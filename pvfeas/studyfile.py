@@ -76,7 +76,12 @@ def depth(content: Any) -> int:
     level, deep = [content], 0
     while level and deep <= DEEPEST:
         deep += 1
-        level = [inner for one in level if isinstance(one, dict | list) for inner in (one.values() if isinstance(one, dict) else one)]
+        level = [
+            inner
+            for one in level
+            if isinstance(one, dict | list)
+            for inner in (one.values() if isinstance(one, dict) else one)
+        ]
     return deep
 
 
@@ -91,7 +96,11 @@ def _syntax(message: str, text: str, file: str) -> Fault:
     source = text.splitlines()[line - 1] if 0 < line <= len(text.splitlines()) else ""
     values = [part.strip() for part in source.split("=")[1:]]
     unquoted = any(one[:1] == "@" or (one[:1].isdigit() and " " in one) for one in values)
-    wanted = 'quantities with units stand in quotes: x = "5 Hz"' if unquoted and "quote" not in said else "see the TOML rules"
+    wanted = (
+        'quantities with units stand in quotes: x = "5 Hz"'
+        if unquoted and "quote" not in said
+        else "see the TOML rules"
+    )
     return Fault(file, line, "", f"this is not TOML: {said[:1].lower()}{said[1:]}", wanted)
 
 
@@ -105,7 +114,12 @@ def _load(content: dict[str, Any], faults: Faults, settings: Settings) -> Study:
     reader = Reader(faults)
     for key in content:
         if key not in TOP:
-            faults.at((key,), key, f"the key {key!r} is not known here", did_you_mean(key, TOP) or f"known are {', '.join(TOP)}")
+            faults.at(
+                (key,),
+                key,
+                f"the key {key!r} is not known here",
+                did_you_mean(key, TOP) or f"known are {', '.join(TOP)}",
+            )
     title = _title(content, faults)
     goal = read_goal(content, reader)
     shared = read_shared(content, reader)
@@ -131,7 +145,7 @@ def _title(content: Mapping[str, Any], faults: Faults) -> str:
 
 def with_settings(content: dict[str, Any], settings: Settings, faults: Faults) -> dict[str, Any]:
     """The content with the values of --set in their places, before anything is inherited."""
-    made = _deep(content)
+    made: dict[str, Any] = _deep(content)
     for address, text in settings:
         parts = [part for part in address.split(".") if part]
         scenarios = made.get("scenario", {})
@@ -184,7 +198,7 @@ def read_goal(content: Mapping[str, Any], reader: Reader) -> dict[str, Any]:
     if raw is None:
         near = next((key for key in content if key not in TOP and did_you_mean(key, ["goal"])), None)
         if near is None:
-            faults.add(1 if faults.lines else 0, "goal", "is missing", 'a table [goal] with kind, within, … is needed')
+            faults.add(1 if faults.lines else 0, "goal", "is missing", "a table [goal] with kind, within, … is needed")
         return {}
     if not isinstance(raw, dict):
         faults.at(("goal",), "goal", f"{_short(raw)} where a table belongs", "write [goal]")
@@ -280,14 +294,21 @@ def broken_line(trees: Mapping[str, Tree], good: Mapping[str, Any]) -> set[str]:
 def _scenario_ok(name: str, value: Any, raw: Mapping[str, Any], faults: Faults) -> bool:
     path = ("scenario", name)
     if not name.replace("_", "a").replace("-", "a").isalnum() or name in ("shared", "goal", "scenario", "title"):
-        faults.at(path, name, f"{_short(name)} cannot name a scenario", "use letters, digits, _ and -, not shared or goal")
+        faults.at(
+            path, name, f"{_short(name)} cannot name a scenario", "use letters, digits, _ and -, not shared or goal"
+        )
         return False
     if not isinstance(value, dict):
         faults.at(path, name, f"{_short(value)} where a table belongs", f"write [scenario.{name}]")
         return False
     for key in value:
         if key not in SCENARIO:
-            faults.at((*path, key), f"{name}.{key}", f"the key {key!r} is not known here", did_you_mean(key, SCENARIO) or f"known are {', '.join(SCENARIO)}")
+            faults.at(
+                (*path, key),
+                f"{name}.{key}",
+                f"the key {key!r} is not known here",
+                did_you_mean(key, SCENARIO) or f"known are {', '.join(SCENARIO)}",
+            )
     based_on = value.get("based_on")
     if based_on is not None and (not isinstance(based_on, str) or based_on not in raw):
         others = [one for one in raw if one != name]
@@ -296,9 +317,16 @@ def _scenario_ok(name: str, value: Any, raw: Mapping[str, Any], faults: Faults) 
     dropped = value.get("without")
     if dropped is not None:
         if not isinstance(dropped, list) or not all(isinstance(one, str) for one in dropped):
-            faults.at((*path, "without"), f"{name}.without", _short(dropped), 'a list of addresses is needed: ["systematics.NAME"]')
+            faults.at(
+                (*path, "without"),
+                f"{name}.without",
+                _short(dropped),
+                'a list of addresses is needed: ["systematics.NAME"]',
+            )
         elif based_on is None and not any(suggest(key, SCENARIO) == "based_on" for key in value if key not in SCENARIO):
-            faults.at((*path, "without"), f"{name}.without", "without, but nothing is inherited", "give based_on, or drop it")
+            faults.at(
+                (*path, "without"), f"{name}.without", "without, but nothing is inherited", "give based_on, or drop it"
+            )
     return True
 
 
@@ -322,14 +350,33 @@ def read_correlations(content: Mapping[str, Any], faults: Faults) -> list[Correl
         near = " ".join(key for key in entry if key not in ("between", "rho"))
         good = isinstance(between, list) and len(between) == 2 and all(isinstance(one, str) for one in between)
         if not good and not (between is None and did_you_mean(near, ("between",))):
-            faults.at((*path, "between"), f"{address}.between", "is missing" if between is None else _short(between), "a list of two addresses is needed")
-        number = isinstance(rho, int | float) and not isinstance(rho, bool)
-        if not number and not (rho is None and did_you_mean(near, ("rho",))):
-            faults.at((*path, "rho"), f"{address}.rho", "is missing" if rho is None else _short(rho), "a number between -1 and 1 is needed")
-        elif number and not -1.0 < float(rho) < 1.0:
-            faults.at((*path, "rho"), f"{address}.rho", f"rho = {rho}", "a number between -1 and 1 is needed; for ±1 use one input")
-        elif number and good:
-            found.append(Correlated(between=(between[0], between[1]), rho=float(rho), line=faults.line_of((*path, "between")), place=place))
+            faults.at(
+                (*path, "between"),
+                f"{address}.between",
+                "is missing" if between is None else _short(between),
+                "a list of two addresses is needed",
+            )
+        number = float(rho) if isinstance(rho, int | float) and not isinstance(rho, bool) else None
+        if number is None and not (rho is None and did_you_mean(near, ("rho",))):
+            faults.at(
+                (*path, "rho"),
+                f"{address}.rho",
+                "is missing" if rho is None else _short(rho),
+                "a number between -1 and 1 is needed",
+            )
+        elif number is not None and not -1.0 < number < 1.0:
+            faults.at(
+                (*path, "rho"),
+                f"{address}.rho",
+                f"rho = {rho}",
+                "a number between -1 and 1 is needed; for ±1 use one input",
+            )
+        elif number is not None and good and isinstance(between, list):
+            found.append(
+                Correlated(
+                    between=(between[0], between[1]), rho=number, line=faults.line_of((*path, "between")), place=place
+                )
+            )
     return found
 
 

@@ -15,9 +15,7 @@ from pvfeas.results import Quantiles
 PROBABILITIES: Mapping[str, float] = {"q05": 0.05, "q16": 0.16, "q50": 0.5, "q84": 0.84, "q95": 0.95}
 
 
-def five(
-    found: Mapping[str, tuple[float | None, float | None]], unit: str, nominal: float | None
-) -> Quantiles:
+def five(found: Mapping[str, tuple[float | None, float | None]], unit: str, nominal: float | None) -> Quantiles:
     """The result from (value, error) for each of the five names."""
     values = {name: value for name, (value, _) in found.items()}
     errors = {name: error for name, (value, error) in found.items() if value is not None}
@@ -80,9 +78,7 @@ def _columns(values: Array) -> Array:
     return np.moveaxis(values, -2, -1).reshape(-1, values.shape[-2])
 
 
-def positive(
-    distribution: Distribution, starts: Quantiles, unit: str, nominal: float | None
-) -> Quantiles:
+def positive(distribution: Distribution, starts: Quantiles, unit: str, nominal: float | None) -> Quantiles:
     """Quantiles of a positive quantity from its distribution function; starts: rough ones."""
     first = guesses(starts, nominal)
     found = solve(distribution, list(PROBABILITIES.values()), first, abs(float(np.log(first[3] / first[1]))) / 2.0)

@@ -26,7 +26,9 @@ class Line:
 class Switching:
     """How live time is shared between the two enantiomers."""
 
-    mode: str = choice("one enantiomer at a time, or both at once", "alternating", "simultaneous", default="alternating")
+    mode: str = choice(
+        "one enantiomer at a time, or both at once", "alternating", "simultaneous", default="alternating"
+    )
     live_fraction: Array = fraction(
         "share of the live time on enantiomer a", lower_open=True, upper_open=True, default="0.5"
     )
@@ -69,9 +71,7 @@ class Systematic:
         "what the size is a fraction of; frequency shift in Hz if absent",
         "hertz", "width", "frequency", "scale", "signal", default="hertz",
     )  # fmt: skip
-    averages: str = choice(
-        "how it averages", "never", "per reset", "as 1/t", "grows", required=True, example="never"
-    )
+    averages: str = choice("how it averages", "never", "per reset", "as 1/t", "grows", required=True, example="never")
     every: Array | None = positive("s", "wall time between resets", example="1 d")
     after: Array | None = positive("s", "live time at which the size holds", example="1 d")
     group: str | None = text("entries of one group add linearly")
@@ -85,9 +85,13 @@ class Goal:
     kinds: ClassVar[tuple[str, ...]] = ("detect", "measure", "exclude", "sign")
 
     kind: str = choice("what is to be shown", *kinds, required=True, example="detect")
-    significance: float | None = quantity("1", "threshold of the claim in sigma", lower=0.0, lower_open=True, example="5")
+    significance: float | None = quantity(
+        "1", "threshold of the claim in sigma", lower=0.0, lower_open=True, example="5"
+    )
     power: float | None = fraction("chance that must be met", lower_open=True, upper_open=True, example="0.9")
-    within: tuple[float, ...] = positive("s", "wall time of the budget, or a list of them", required=True, many=True, example="60 d")
+    within: tuple[float, ...] = positive(
+        "s", "wall time of the budget, or a list of them", required=True, many=True, example="60 d"
+    )
     sides: int = integer("sides of the claim; 1 says that the sign is predicted", lower=1, upper=2, default=2)
     trials: int = integer("lines or splittings tried: the look-elsewhere effect", lower=1, default=1)
     looks: int = integer("equal instalments after each of which a claim may be made", lower=1, upper=1000, default=1)

@@ -27,8 +27,11 @@ def understood(study: Study) -> Understood:
         along = quantity is not None and quantity.along_line
         rows.append(
             InputRow(
-                one.address, quantity.text if quantity else "", law_in_words(one.law, "FWHM" if along else unit),
-                quantity.status if quantity else "", quantity.source if quantity else "",
+                one.address,
+                quantity.text if quantity else "",
+                law_in_words(one.law, "FWHM" if along else unit),
+                quantity.status if quantity else "",
+                quantity.source if quantity else "",
             )  # fmt: skip
         )
         if isinstance(one.law, Exact):
@@ -52,21 +55,25 @@ def law_in_words(law: Law | Ensemble, unit: str) -> str:
         return value_text(value, unit, 4)
 
     if isinstance(law, Ensemble):
-        members = ", ".join(f"{name} {law_in_words(one, unit)}" for name, one in zip(law.members, law.laws, strict=True))
+        members = ", ".join(
+            f"{name} {law_in_words(one, unit)}" for name, one in zip(law.members, law.laws, strict=True)
+        )
         return f"{len(law.members)} calculations: {members}"
     if isinstance(law, Exact):
         return f"exactly {show(law.value)}"
     if isinstance(law, Normal):
         return f"normal, {show(law.mean)} with standard deviation {show(law.sd)}"
     if isinstance(law, TwoPiece):
-        return f"two-piece normal, median {show(law.median)}, 16 % at {show(law.median - law.minus)}, 84 % at {show(law.median + law.plus)}"
+        low, high = show(law.median - law.minus), show(law.median + law.plus)
+        return f"two-piece normal, median {show(law.median)}, 16 % at {low}, 84 % at {high}"
     if isinstance(law, Lognormal):
         return f"lognormal, median {show(law.median)}, factor {digits(law.factor)}"
     if isinstance(law, Uniform | LogUniform):
         kind = "uniform" if isinstance(law, Uniform) else "log-uniform"
         return f"{kind} from {show(law.lower)} to {show(law.upper)}"
     if isinstance(law, Beta):
-        return f"beta between {digits(law.lower)} and {digits(law.upper)}, mean {show(law.mean)}, standard deviation {show(law.sd)}"
+        ends = f"{digits(law.lower)} and {digits(law.upper)}"
+        return f"beta between {ends}, mean {show(law.mean)}, standard deviation {show(law.sd)}"
     if isinstance(law, Truncated):
         return f"{law_in_words(law.base, unit)}, cut to what is possible"
     return type(law).__name__
@@ -100,7 +107,9 @@ def _quantity_text(quantity: Quantity) -> str:
     if quantity.members:
         return ", ".join(f"{name} {member.text}" for name, member in quantity.members)
     factors = "".join(f" × {_quantity_text(one)}" for one in quantity.times)
-    scales = "".join(f" × ({_quantity_text(s.with_)} / {_quantity_text(s.from_)})^{s.exponent.text}" for s in quantity.scale)
+    scales = "".join(
+        f" × ({_quantity_text(s.with_)} / {_quantity_text(s.from_)})^{s.exponent.text}" for s in quantity.scale
+    )
     return f"{quantity.text}{factors}{scales}"
 
 

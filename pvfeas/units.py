@@ -97,6 +97,9 @@ def unit_factor(unit: str, canonical: str) -> float:
     table = TABLES.get(canonical, {})
     if symbol in table:
         return float(table[symbol])
+    (above, _, below), (top, _, bottom) = symbol.partition("/"), canonical.partition("/")
+    if bottom and above in TABLES.get(top, {}) and below in TABLES.get(bottom, {}):
+        return float(TABLES[top][above] / TABLES[bottom][below])
     _refuse_ambiguous(symbol, canonical)
     if not any(sign in symbol for sign in "/*·^ ()"):
         raise QuantityError(_found(symbol, canonical), _hint(symbol, canonical))
@@ -127,7 +130,8 @@ def _hint(symbol: str, canonical: str) -> str:
 def _refuse_ambiguous(symbol: str, canonical: str) -> None:
     if symbol.startswith("rad") and canonical in ("Hz", "1/s"):
         raise QuantityError(
-            f"{symbol!r} is an angular frequency", "divide by 2 pi (6.283185…) yourself and write Hz: nothing is assumed"
+            f"{symbol!r} is an angular frequency",
+            "divide by 2 pi (6.283185…) yourself and write Hz: nothing is assumed",
         )
     if symbol in ("ppb", "ppt", "ppq"):
         raise QuantityError(f"{symbol!r} means different things to different people", "write 1e-9 or 1e-12 instead")
@@ -172,7 +176,7 @@ PLAIN_COMPOUND = re.compile(rf"/?{GROUP}(?:[*/]{GROUP}){{0,5}}")
 def _registry() -> Any:
     import pint
 
-    registry = pint.UnitRegistry(None, cache_folder=None, on_redefinition="raise")
+    registry: Any = pint.UnitRegistry(None, cache_folder=None, on_redefinition="raise")
     lines = [f"{name}- = 1e{power}" for name, power in PREFIXES.items() if name and name != "µ"]
     registry.load_definitions([*lines, "µ- = 1e-6", *(line for line in DEFINITIONS.splitlines() if line)])
     return registry
@@ -182,7 +186,13 @@ def compound(symbol: str, canonical: str = "") -> tuple[float, tuple[tuple[str, 
     """Factor and dimension of a compound unit such as kHz/Pa, through the registry."""
     import pint
 
-    text = ("1" + symbol if symbol.startswith("/") else symbol).replace("%", "percent").replace("·", "*").replace("sqrt(Hz)", "Hz**0.5").replace("^", "**")
+    text = (
+        ("1" + symbol if symbol.startswith("/") else symbol)
+        .replace("%", "percent")
+        .replace("·", "*")
+        .replace("sqrt(Hz)", "Hz**0.5")
+        .replace("^", "**")
+    )
     text = text.replace("cm**-1", "wavenumber").replace("cm-1", "wavenumber").replace("1/cm", "wavenumber")
     if "rad" in text:
         raise QuantityError(f"{symbol!r} has radians in it", "divide by 2 pi yourself and write Hz: nothing is assumed")

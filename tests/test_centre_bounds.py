@@ -114,9 +114,7 @@ def test_an_unknown_admixture_costs_root_two_on_a_lorentzian_however_wide_the_sc
         assert 0 < ratios[2] < 0.51 * ratios[1] < 0.51**2 * ratios[0] < 0.51**2 * 0.03
 
 
-@pytest.mark.parametrize(
-    ("offset", "expected"), [(0.5, (0.69461, 0.80879)), (1.0, (0.85776, 0.90516))]
-)
+@pytest.mark.parametrize(("offset", "expected"), [(0.5, (0.69461, 0.80879)), (1.0, (0.85776, 0.90516))])
 def test_off_centre_table(offset: float, expected: tuple[float, float]) -> None:
     # span 3 FWHM; amplitude, width and baseline free (derived, five digits)
     for profile, value in zip(("gaussian", "lorentzian"), expected, strict=True):

@@ -26,9 +26,7 @@ def test_values_against_their_definitions() -> None:
     # (Gamma/2)^2/((nu - nu0)^2 + (Gamma/2)^2) and exp(-(nu - nu0)^2/(2 sigma^2)) with Gamma = 2.354820 sigma
     np.testing.assert_allclose(PROFILES["lorentzian"].value(PLACES), 0.25 / (PLACES**2 + 0.25), rtol=1e-14)
     sigma = 1.0 / np.sqrt(8.0 * np.log(2.0))
-    np.testing.assert_allclose(
-        PROFILES["gaussian"].value(PLACES), np.exp(-(PLACES**2) / (2.0 * sigma**2)), rtol=1e-12
-    )
+    np.testing.assert_allclose(PROFILES["gaussian"].value(PLACES), np.exp(-(PLACES**2) / (2.0 * sigma**2)), rtol=1e-12)
 
 
 MP_VALUES: dict[str, Callable[[Any], Any]] = {

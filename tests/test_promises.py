@@ -36,7 +36,9 @@ def test_odds_of_independent_compounds() -> None:
 def test_the_same_input_ties() -> None:
     """Through one shared input the larger compound always wins."""
     shared = ODDS.replace("[scenario.one]", '[shared]\ntheory = "1 ×/ 1.6"\n[scenario.one]')
-    shared = shared.replace('"1.3 Hz ×/ 1.6"', '"1.3 Hz", times = ["@theory"]').replace('"1 Hz ×/ 1.6"', '"1 Hz", times = ["@theory"]')
+    shared = shared.replace('"1.3 Hz ×/ 1.6"', '"1.3 Hz", times = ["@theory"]').replace(
+        '"1 Hz ×/ 1.6"', '"1 Hz", times = ["@theory"]'
+    )
     assert compare(problem_of(load_study(shared))).odds[0].first_sooner == 1.0
 
 
@@ -54,12 +56,16 @@ def test_same_bytes_alone_in_another_order_and_in_another_process() -> None:
         "sys.stdout.write(_answer(STUDY))"
     )
     root = Path(__file__).resolve().parent.parent
-    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=root, encoding="utf-8")
+    done = subprocess.run(
+        [sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=root, encoding="utf-8"
+    )
     assert done.stdout == forward[0]
 
 
 def _run(*arguments: str) -> subprocess.CompletedProcess[str]:
-    return subprocess.run([sys.executable, "-m", "pvfeas", *arguments], capture_output=True, text=True, encoding="utf-8")
+    return subprocess.run(
+        [sys.executable, "-m", "pvfeas", *arguments], capture_output=True, text=True, encoding="utf-8"
+    )
 
 
 def test_exit_codes_and_messages(tmp_path: Path) -> None:

@@ -26,7 +26,9 @@ from pvfeas.commands.shared import (
 @click.option("--scenario", "names", multiple=True, metavar="NAME", help="Only this scenario; may be repeated.")
 @format_options
 @number_options
-def command(study: str, settings: tuple[str, ...], names: tuple[str, ...], form: str | None, output: str, **given: Any) -> int:
+def command(
+    study: str, settings: tuple[str, ...], names: tuple[str, ...], form: str | None, output: str, **given: Any
+) -> int:
     """Required time, chance, significance, resolution, reach and limit of each scenario."""
     from pvfeas.compiler import problem_of
     from pvfeas.output.csv import assessment_csv

@@ -26,14 +26,16 @@ from pvfeas.commands.shared import (
 @click.argument("names", nargs=-1, metavar="[NAME]…")
 @format_options
 @number_options
-def command(study: str, settings: tuple[str, ...], names: tuple[str, ...], form: str | None, output: str, **given: Any) -> int:
+def command(
+    study: str, settings: tuple[str, ...], names: tuple[str, ...], form: str | None, output: str, **given: Any
+) -> int:
     """Scenarios side by side: answers, what was written differently, and the odds that one beats another."""
     from pvfeas.compiler import problem_of
     from pvfeas.output.csv import assessment_csv
     from pvfeas.output.json import comparison_content, to_json
     from pvfeas.output.table import comparison_text
-    from pvfeas.questions.assess import chosen
     from pvfeas.questions.compare import compare
+    from pvfeas.questions.planning import chosen
     from pvfeas.understanding import differences
 
     kind, options, ticker = format_of(form, output), options_of(given), Ticker(given["quiet"])

@@ -9,7 +9,9 @@ from pvfeas.commands.shared import emit
 
 @click.command("convert", context_settings={"ignore_unknown_options": True})
 @click.argument("value")
-@click.option("--to", "units", multiple=True, metavar="UNIT", help="Unit wanted; may be repeated. All of them if left out.")
+@click.option(
+    "--to", "units", multiple=True, metavar="UNIT", help="Unit wanted; may be repeated. All of them if left out."
+)
 @click.option("--minus", metavar="VALUE", help="Subtract this value first, at full precision.")
 @click.option("--digits", default=12, show_default=True, type=click.IntRange(1, 50))
 def command(value: str, units: tuple[str, ...], minus: str | None, digits: int) -> int:

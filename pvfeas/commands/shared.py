@@ -34,9 +34,17 @@ def _together(*decorators: Callable[[F], F]) -> Callable[[F], F]:
 
 study_options = _together(
     click.argument("study", metavar="STUDY"),
-    click.option("--set", "settings", multiple=True, metavar="ADDRESS=VALUE", help="Change an input, as in beam.line.fwhm='5 kHz'."),
+    click.option(
+        "--set",
+        "settings",
+        multiple=True,
+        metavar="ADDRESS=VALUE",
+        help="Change an input, as in beam.line.fwhm='5 kHz'.",
+    ),
 )
-output_option = click.option("-o", "--output", default="-", metavar="FILE", help="Write there; the suffix sets the format.")
+output_option = click.option(
+    "-o", "--output", default="-", metavar="FILE", help="Write there; the suffix sets the format."
+)
 format_options = _together(
     click.option("--json", "form", flag_value="json", help="Write JSON."),
     click.option("--csv", "form", flag_value="csv", help="Write CSV."),
@@ -44,12 +52,28 @@ format_options = _together(
 )
 number_options = _together(
     click.option("--seed", default=1, show_default=True, type=click.IntRange(0), help="Seed of the points."),
-    click.option("--tolerance", default=1.0, show_default=True, type=click.FloatRange(1e-3, 100), help="Scale of the tolerances."),
-    click.option("--method", type=click.Choice(["lattice", "monte-carlo"]), default="lattice", show_default=True, help="How inputs are drawn."),
-    click.option("--maximum-points", default=16384, show_default=True, type=click.IntRange(256, 2**20), help="Most points per replicate."),
+    click.option(
+        "--tolerance", default=1.0, show_default=True, type=click.FloatRange(1e-3, 100), help="Scale of the tolerances."
+    ),
+    click.option(
+        "--method",
+        type=click.Choice(["lattice", "monte-carlo"]),
+        default="lattice",
+        show_default=True,
+        help="How inputs are drawn.",
+    ),
+    click.option(
+        "--maximum-points",
+        default=16384,
+        show_default=True,
+        type=click.IntRange(256, 2**20),
+        help="Most points per replicate.",
+    ),
     click.option("--figure", metavar="FILE", help="Draw sigma and chance against time: .pdf, .svg or .png."),
     click.option("--figure-data", metavar="FILE", help="The numbers of the figure as CSV."),
-    click.option("--fail-under", type=click.FloatRange(0, 1), metavar="CHANCE", help="Exit with 3 if a chance is lower."),
+    click.option(
+        "--fail-under", type=click.FloatRange(0, 1), metavar="CHANCE", help="Exit with 3 if a chance is lower."
+    ),
     click.option("--quiet", is_flag=True, help="No progress, no warnings on stderr."),
 )
 
@@ -122,7 +146,9 @@ class Ticker:
             sys.stderr.flush()
 
 
-def draw_figures(problem: Problem, result: Assessment, question: Mapping[str, object], given: Mapping[str, Any]) -> None:
+def draw_figures(
+    problem: Problem, result: Assessment, question: Mapping[str, object], given: Mapping[str, Any]
+) -> None:
     """The figure of an answer and its numbers, where they were asked for."""
     if given["figure"] is None and given["figure_data"] is None:
         return

@@ -61,7 +61,9 @@ def curves_csv(curves: Curves, question: Mapping[str, Any], sha256: str) -> str:
     return to_csv(rows, columns(question, sha256))
 
 
-def _point(scenario: str, curve: str, wall: float | None, value: float | None, unit: str, error: float | None = None) -> Row:
+def _point(
+    scenario: str, curve: str, wall: float | None, value: float | None, unit: str, error: float | None = None
+) -> Row:
     return {"scenario": scenario, "curve": curve, "wall_time (s)": wall, "value": value, "unit": unit, "error": error}
 
 
@@ -76,7 +78,11 @@ def _sigma_rows(one: SigmaCurve) -> Iterator[Row]:
     }  # fmt: skip
     for name, level in levels.items():
         yield _point(one.scenario, name, None, level, one.unit)
-    for name, wall_mark in {"required time, nominal": one.crossing, "first time": one.first, "sample used up": one.last}.items():
+    for name, wall_mark in {
+        "required time, nominal": one.crossing,
+        "first time": one.first,
+        "sample used up": one.last,
+    }.items():
         yield _point(one.scenario, name, wall_mark, None, one.unit)
 
 

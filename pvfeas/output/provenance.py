@@ -19,7 +19,11 @@ def question_text(question: Mapping[str, object]) -> str:
         if name == "scenarios" and isinstance(value, list | tuple):
             said.append(f"scenarios {', '.join(str(one) for one in value)}")
         elif name != "name":
-            said.append(f"{name.replace('_', ' ')} {value:g}" if isinstance(value, float) else f"{name.replace('_', ' ')} {value}")
+            said.append(
+                f"{name.replace('_', ' ')} {value:g}"
+                if isinstance(value, float)
+                else f"{name.replace('_', ' ')} {value}"
+            )
     return "; ".join(said)
 
 

@@ -99,8 +99,14 @@ def _sigmas(value: float | None) -> str:
 
 def _sigma(scenarios: Sequence[ScenarioResult]) -> Iterator[tuple[str, Show]]:
     yield "significance at budget", lambda one: "-" if one.significance is None else _sigmas(one.significance.q50)
-    yield "  16–84 %", lambda one: "-" if one.significance is None else range_text(one.significance.q16, one.significance.q84, "1")
-    yield "  surviving doubt of sizes", lambda one: "-" if one.significance is None else _sigmas(one.significance.surviving)
+    yield (
+        "  16–84 %",
+        lambda one: "-" if one.significance is None else range_text(one.significance.q16, one.significance.q84, "1"),
+    )
+    yield (
+        "  surviving doubt of sizes",
+        lambda one: "-" if one.significance is None else _sigmas(one.significance.surviving),
+    )
     yield "sigma at budget", lambda one: _level(one.sigma.total, one.sigma.unit)
     yield "  statistical", lambda one: _level(one.sigma.statistical, one.sigma.unit)
     yield "  reference", lambda one: _level(one.sigma.reference, one.sigma.unit)
@@ -110,7 +116,10 @@ def _sigma(scenarios: Sequence[ScenarioResult]) -> Iterator[tuple[str, Show]]:
     for name in names[:MOST_PARTS]:
         yield f"  sigma^2: {name.removeprefix('systematics.')}", lambda one, name=name: _part(one, name)  # type: ignore[misc]
     if names[MOST_PARTS:]:
-        yield "  sigma^2: all others", lambda one: f"{100 * sum(one.sigma.shares.get(each, 0.0) for each in names[MOST_PARTS:]):.1f} %"
+        yield (
+            "  sigma^2: all others",
+            lambda one: f"{100 * sum(one.sigma.shares.get(each, 0.0) for each in names[MOST_PARTS:]):.1f} %",
+        )
 
 
 def _largest(scenarios: Sequence[ScenarioResult]) -> list[str]:
@@ -136,8 +145,14 @@ def _fraction(level: Level | None) -> str:
 
 
 def _needed() -> Iterator[tuple[str, Show]]:
-    yield "sigma needed, splitting", lambda one: "-" if one.resolution is None else _level(one.resolution.needed, one.resolution.unit)
-    yield "  of one line centre", lambda one: "-" if one.resolution is None else _level(one.resolution.needed_centre, one.resolution.unit)
+    yield (
+        "sigma needed, splitting",
+        lambda one: "-" if one.resolution is None else _level(one.resolution.needed, one.resolution.unit),
+    )
+    yield (
+        "  of one line centre",
+        lambda one: "-" if one.resolution is None else _level(one.resolution.needed_centre, one.resolution.unit),
+    )
     yield "  split the line width to", lambda one: "-" if one.resolution is None else _fraction(one.resolution.of_fwhm)
     yield "  of the frequency", lambda one: "-" if one.resolution is None else _fraction(one.resolution.of_frequency)
 
@@ -146,6 +161,9 @@ def _reach() -> Iterator[tuple[str, Show]]:
     yield "line centre, one cycle", lambda one: _middle(one.centre_uncertainty)
     yield "sensitivity", lambda one: _middle(one.sensitivity)
     yield from _spread("reach at budget", lambda one: one.reach)
-    yield "limit if no splitting", lambda one: "-" if one.limit is None else short(value_text(one.limit.q50, one.limit.unit))
+    yield (
+        "limit if no splitting",
+        lambda one: "-" if one.limit is None else short(value_text(one.limit.q50, one.limit.unit)),
+    )
     yield "  confidence", lambda one: "-" if one.limit is None else f"{100 * one.limit.confidence:.4g} %"
     yield "  construction", lambda one: "-" if one.limit is None else one.limit.construction

@@ -39,7 +39,11 @@ def understood_text(found: Understood, width: int = WIDTH, colour: bool = False)
         parts.append(f"{one.address} = {one.text}\n    {wrapped(said, max(text - 4, 20), '    ')}")
     rows = "\n".join(parts[1:] if found.title else parts)
     parts = [*parts[: 1 if found.title else 0], rows]
-    for name, listed in (("exact", found.exact), ("assumed or extrapolated", found.assumed), ("without source", found.without_source)):
+    for name, listed in (
+        ("exact", found.exact),
+        ("assumed or extrapolated", found.assumed),
+        ("without source", found.without_source),
+    ):
         parts.append(wrapped(f"{name} ({len(listed)}): {', '.join(listed) if listed else 'none'}", text, "  "))
     parts += warning_lines(found.warnings, text)
     return _joined(parts)
@@ -51,7 +55,13 @@ def warning_lines(warnings: Sequence[Warned], width: int) -> list[str]:
     for one in warnings:
         places.setdefault((one.code, one.message), []).append(one.address)
     return [
-        wrapped(f"warning ({code}): {', '.join(filter(None, where))}: {said}" if any(where) else f"warning ({code}): {said}", width, "  ")
+        wrapped(
+            f"warning ({code}): {', '.join(filter(None, where))}: {said}"
+            if any(where)
+            else f"warning ({code}): {said}",
+            width,
+            "  ",
+        )
         for (code, said), where in places.items()
     ]
 
@@ -60,14 +70,9 @@ def doubts(result: Assessment, width: int) -> list[str]:
     """The warnings of an assessment, and numbers that did not meet their tolerance."""
     found = warning_lines(result.warnings, width)
     if not result.tolerance_met:
-        worst = max(one.chance.error for one in result.scenarios)
-        found.append(
-            wrapped(
-                f"warning (tolerance): not every number met its tolerance with {result.points} points (chances are known "
-                f"to {error_text(worst)}); allow more with --maximum-points",
-                width, "  ",
-            )  # fmt: skip
-        )
+        worst = error_text(max(one.chance.error for one in result.scenarios))
+        said = f"warning (tolerance): not every number met its tolerance with {result.points} points"
+        found.append(wrapped(f"{said} (chances are known to {worst}); allow more with --maximum-points", width, "  "))
     return found
 
 
@@ -77,7 +82,9 @@ def _joined(parts: Sequence[str]) -> str:
 
 def cleaned_but_colour(text: str) -> str:
     """Without control characters other than the codes of our own bold headers."""
-    return "\x1b[1m".join("\x1b[0m".join(cleaned(piece) for piece in part.split("\x1b[0m")) for part in text.split("\x1b[1m"))
+    return "\x1b[1m".join(
+        "\x1b[0m".join(cleaned(piece) for piece in part.split("\x1b[0m")) for part in text.split("\x1b[1m")
+    )
 
 
 def _body(result: Assessment, width: int, colour: bool) -> list[str]:

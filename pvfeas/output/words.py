@@ -15,14 +15,16 @@ CAUTION = (
     "for local rules and qualified people to decide."
 )
 ASCII = {
-    "σ": "sigma", "√": "sqrt ", "∞": "inf", "≥": ">=", "≤": "<=", "–": "-", "—": "-", "×": "x", "±": "+/-", "µ": "u", "μ": "u",
-    "…": "...", "─": "-", "²": "^2", "°": "deg", "−": "-", "’": "'", "‘": "'", "“": '"', "”": '"',
+    "σ": "sigma", "√": "sqrt ", "∞": "inf", "≥": ">=", "≤": "<=", "–": "-", "—": "-", "×": "x", "±": "+/-", "µ": "u",
+    "μ": "u", "…": "...", "─": "-", "²": "^2", "°": "deg", "−": "-", "’": "'", "‘": "'", "“": '"', "”": '"',
 }  # fmt: skip
 
 
 def encodable(text: str, encoding: str) -> str:
     """The text with what the encoding cannot carry written in ASCII."""
-    found = {sign: spelt for sign in set(text) if (spelt := _spelt(sign, encoding)) != sign}
+    found: dict[str, str | int | None] = {
+        sign: spelt for sign in set(text) if (spelt := _spelt(sign, encoding)) != sign
+    }
     return text.translate(str.maketrans(found))
 
 
@@ -39,7 +41,9 @@ def _spelt(sign: str, encoding: str) -> str:
 
 def cleaned(text: str) -> str:
     """The text without control characters, which could steer a terminal."""
-    return "".join(sign if sign == "\n" or unicodedata.category(sign) not in ("Cc", "Cf", "Cs") else "?" for sign in text)
+    return "".join(
+        sign if sign == "\n" or unicodedata.category(sign) not in ("Cc", "Cf", "Cs") else "?" for sign in text
+    )
 
 
 def wrapped(text: str, width: int, hanging: str = "") -> str:
@@ -81,7 +85,10 @@ def range_text(low: float | None, high: float | None, unit: str) -> str:
     if low is None and high is None:
         return "never" if unit == "s" else "-"
     if unit == "s" or low is None or high is None:
-        first, second = value_text(low, unit) if unit != "s" else time_text(low), time_text(high) if unit == "s" else value_text(high, unit)
+        first, second = (
+            value_text(low, unit) if unit != "s" else time_text(low),
+            time_text(high) if unit == "s" else value_text(high, unit),
+        )
         number, _, measure = first.partition(" ")
         return f"{number} – {second}" if measure and second.endswith(f" {measure}") else f"{first} – {second}"
     largest = max(abs(low), abs(high))

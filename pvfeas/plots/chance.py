@@ -22,13 +22,22 @@ def draw_chance(axes: Any, curves: tuple[ChanceCurve, ...], wall: tuple[float, f
     axes.axvline(budget, color=DARK, linewidth=0.8, linestyle=(0, (4, 2)), zorder=2)
     left = budget > (wall[0] * wall[1]) ** 0.5
     axes.annotate(
-        f"budget {time_text(budget)}", (budget, 0.0), xytext=(-3 if left else 3, 3), textcoords="offset points", rotation=90, va="bottom",
-        ha="right" if left else "left", fontsize=SMALL, color=DARK,
+        f"budget {time_text(budget)}", (budget, 0.0), xytext=(-3 if left else 3, 3), textcoords="offset points",
+        rotation=90, va="bottom", ha="right" if left else "left", fontsize=SMALL, color=DARK,
     )  # fmt: skip
     ends = apart([one.chance[-1] for one in curves], 0.055)
     for place, one in enumerate(curves):
         axes.plot(one.wall_time, one.chance, color=colour(place), linestyle=dashes(place), zorder=4, clip_on=False)
-        axes.plot([budget], [one.at_budget], marker="o", markersize=4, color=colour(place), markeredgecolor="white", zorder=5, clip_on=False)
+        axes.plot(
+            [budget],
+            [one.at_budget],
+            marker="o",
+            markersize=4,
+            color=colour(place),
+            markeredgecolor="white",
+            zorder=5,
+            clip_on=False,
+        )
         if one.ceiling - one.chance[-1] > 0.01 or len(curves) == 1:
             axes.plot(wall, [one.ceiling] * 2, color=colour(place), linewidth=0.7, linestyle=":", zorder=2)
         axes.annotate(

@@ -24,7 +24,12 @@ def figure_bytes(figure: Any, target: str, metadata: Mapping[str, str]) -> bytes
     if suffix == ".pdf":
         told |= {"CreationDate": None, "ModDate": None}
     elif suffix == ".svg":
-        told = {"Title": metadata["Title"], "Description": metadata["Subject"], "Creator": metadata["Creator"], "Date": None}
+        told = {
+            "Title": metadata["Title"],
+            "Description": metadata["Subject"],
+            "Creator": metadata["Creator"],
+            "Date": None,
+        }
     else:
         told = {"Title": metadata["Title"], "Description": metadata["Subject"], "Software": metadata["Creator"]}
     stream = io.BytesIO()

@@ -24,6 +24,8 @@ def sheet(curves: Curves) -> Any:
         wall = (times[0], times[-1])
         draw_sigma(left, curves.sigma, wall)
         draw_chance(right, curves.chance, wall)
-        figure.suptitle(f"{curves.title}: {curves.goal}" if curves.title else curves.goal, fontsize=8.5, x=0.02, ha="left")
+        figure.suptitle(
+            f"{curves.title}: {curves.goal}" if curves.title else curves.goal, fontsize=8.5, x=0.02, ha="left"
+        )
         figure.subplots_adjust(left=0.115, right=0.87, top=0.88, bottom=0.14, wspace=0.56)
     return figure

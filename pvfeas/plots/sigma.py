@@ -29,12 +29,16 @@ def draw_sigma(axes: Any, curves: tuple[SigmaCurve, ...], wall: tuple[float, flo
             labels += _parts(axes, one)
             _needed_band(axes, one, wall)
         elif one.needed_q50 is not None:
-            axes.plot([wall[0], wall[1]], [one.needed_q50] * 2, color=colour(place), linewidth=0.7, linestyle=":", zorder=2)
+            axes.plot(
+                [wall[0], wall[1]], [one.needed_q50] * 2, color=colour(place), linewidth=0.7, linestyle=":", zorder=2
+            )
         _crossing(axes, one, place, (low, high))
         _ends(axes, one, wall)
     _labels(axes, labels, (low, high))
     if len(curves) > 1:
-        axes.text(0.02, 0.02, "dotted: sigma the goal needs (median)", transform=axes.transAxes, fontsize=SMALL, color=DARK)
+        axes.text(
+            0.02, 0.02, "dotted: sigma the goal needs (median)", transform=axes.transAxes, fontsize=SMALL, color=DARK
+        )
 
 
 def _range(curves: tuple[SigmaCurve, ...]) -> tuple[float, float]:
@@ -59,7 +63,12 @@ def _needed_band(axes: Any, one: SigmaCurve, wall: tuple[float, float]) -> None:
     axes.fill_between(wall, [one.needed_q16] * 2, [one.needed_q84] * 2, color=GREY, alpha=0.22, linewidth=0, zorder=1)
     axes.plot(wall, [one.needed_q50] * 2, color=GREY, linewidth=0.9, zorder=2)
     axes.annotate(
-        "needed (median, 16–84 %)", (wall[0], one.needed_q50), xytext=(3, 2), textcoords="offset points", fontsize=SMALL, color=DARK
+        "needed (median, 16–84 %)",
+        (wall[0], one.needed_q50),
+        xytext=(3, 2),
+        textcoords="offset points",
+        fontsize=SMALL,
+        color=DARK,
     )
 
 
@@ -68,7 +77,15 @@ def _crossing(axes: Any, one: SigmaCurve, place: int, span: tuple[float, float])
         return
     if not one.wall_time[0] <= one.crossing <= one.wall_time[-1]:
         return
-    axes.plot([one.crossing], [one.needed_nominal], marker="o", markersize=4.5, color=colour(place), markeredgecolor="white", zorder=6)
+    axes.plot(
+        [one.crossing],
+        [one.needed_nominal],
+        marker="o",
+        markersize=4.5,
+        color=colour(place),
+        markeredgecolor="white",
+        zorder=6,
+    )
     axes.annotate(
         time_text(one.crossing), (one.crossing, one.needed_nominal), xytext=(5, 5), textcoords="offset points",
         fontsize=SMALL, color=colour(place), zorder=7,
@@ -79,8 +96,8 @@ def _ends(axes: Any, one: SigmaCurve, wall: tuple[float, float]) -> None:
     if one.last is not None and wall[0] < one.last < wall[1]:
         axes.axvline(one.last, color=GREY, linewidth=0.7, linestyle=(0, (2, 2)))
         axes.annotate(
-            f"sample used up, {time_text(one.last)}", (one.last, 1.0), xycoords=("data", "axes fraction"), xytext=(-3, -3),
-            textcoords="offset points", rotation=90, va="top", ha="right", fontsize=SMALL, color=DARK,
+            f"sample used up, {time_text(one.last)}", (one.last, 1.0), xycoords=("data", "axes fraction"),
+            xytext=(-3, -3), textcoords="offset points", rotation=90, va="top", ha="right", fontsize=SMALL, color=DARK,
         )  # fmt: skip
     if one.floor is not None:
         axes.axhline(one.floor, color=GREY, linewidth=0.6, linestyle=(0, (1, 1.5)), zorder=1)

@@ -7,10 +7,18 @@ from typing import Any
 
 # Okabe & Ito's palette for colour-blind readers (2008, Color Universal Design), told apart by line style too.
 COLOURS = ("#0072B2", "#D55E00", "#009E73", "#CC79A7", "#E69F00", "#56B4E9", "#000000")
-DASHES: tuple[Any, ...] = ("-", (0, (5, 1.5)), (0, (1.5, 1.2)), (0, (6, 1.5, 1.5, 1.5)), (0, (3, 1, 1, 1, 1, 1)), "-", "--")
+DASHES: tuple[Any, ...] = (
+    "-",
+    (0, (5, 1.5)),
+    (0, (1.5, 1.2)),
+    (0, (6, 1.5, 1.5, 1.5)),
+    (0, (3, 1, 1, 1, 1, 1)),
+    "-",
+    "--",
+)
 SMALL, NORMAL = 7.0, 8.0
 GREY, DARK = "#8a8a8a", "#333333"
-SETTINGS = {
+SETTINGS: Any = {
     "font.family": "DejaVu Sans",
     "font.size": NORMAL,
     "axes.labelsize": NORMAL,
@@ -29,7 +37,8 @@ SETTINGS = {
 TIMES = (
     (1e-3, "1 ms"), (1e-2, "10 ms"), (0.1, "0.1 s"), (1.0, "1 s"), (10.0, "10 s"), (60.0, "1 min"), (600.0, "10 min"),
     (3600.0, "1 h"), (21600.0, "6 h"), (86400.0, "1 d"), (604800.0, "1 wk"), (2629800.0, "1 month"),
-    (15778800.0, "6 months"), (31557600.0, "1 yr"), (157788000.0, "5 yr"), (315576000.0, "10 yr"), (3155760000.0, "100 yr"),
+    (15778800.0, "6 months"), (31557600.0, "1 yr"), (157788000.0, "5 yr"), (315576000.0, "10 yr"),
+    (3155760000.0, "100 yr"),
 )  # fmt: skip
 
 

@@ -37,7 +37,8 @@ def assess(
     """Answer everything about the named scenarios (all if none is named).
 
     Points double until every number meets its tolerance or the maximum is reached; a number that
-    meets it is kept, so that no scenario depends on which others are asked for. Raises UsageError for a scenario that the study does not have.
+    meets it is kept, so that no scenario depends on which others are asked for. Raises UsageError for
+    a scenario that the study does not have.
     """
     options = options or Options()
     scenarios = chosen(problem, names)

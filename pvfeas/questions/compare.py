@@ -8,7 +8,7 @@ from itertools import combinations
 
 import numpy as np
 
-from pvfeas.conditional import along_nodes, excess
+from pvfeas.conditional import Booleans, along_nodes, excess
 from pvfeas.errors import UsageError
 from pvfeas.integration import draws_along, node_axis
 from pvfeas.laws import Array
@@ -66,7 +66,9 @@ def _pair(sampling: Sampling, first: Plan, second: Plan) -> Odds:
     else:
         sample = sampling.thin
         inside, margins = _sooner_neither_same(lead, other, draws_along(sampling.problem, sample, address))
-        points = [along_nodes(one, margin.__getitem__, node_axis(sample)) for one, margin in zip(inside, margins, strict=True)]
+        points = [
+            along_nodes(one, margin.__getitem__, node_axis(sample)) for one, margin in zip(inside, margins, strict=True)
+        ]
     sooner, neither, same = (sample.average(one) for one in points)
     later = np.maximum(1.0 - sooner - neither - same, 0.0)
     nominal = [_number(_times(one, one.nominal.sampled, nominal_draws(one.problem.inputs))) for one in (first, second)]
@@ -106,7 +108,7 @@ def _times(planned: Plan, real: Realisation, draws: Draws) -> Array:
     return required_wall_time(real, planned.rule, real.factor * planned.target.at(draws))
 
 
-def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Array], list[Array]]:
+def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Booleans], list[Array]]:
     """Whether, and how clearly, the lead is sooner, both are unreachable, both need the same time.
 
     The lead is sooner where its signal is more than it needs at the required time of the other, which

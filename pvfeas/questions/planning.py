@@ -152,16 +152,10 @@ def samplings(problem: Problem, options: Options) -> Iterator[Sampling]:
         for sample in pseudo_random_samples(problem, options):
             yield Sampling(problem, options.seed, sample)
         return
-    drawn: dict[int, Sample] = {}
-
-    def of(exponent: int) -> Sample:
-        if exponent not in drawn:
-            drawn[exponent] = draw(problem.inputs, problem.correlations, options.seed, exponent)
-        return drawn[exponent]
-
     exponent = FIRST
     while True:
-        yield Sampling(problem, options.seed, of(exponent), of(exponent - THINNER), of(SMALL))
+        full = draw(problem.inputs, problem.correlations, options.seed, exponent)
+        yield Sampling(problem, options.seed, full, full.thinned(THINNER), full.thinned(exponent - SMALL))
         exponent += 1
         if 2**exponent > options.maximum_points:
             return

@@ -63,7 +63,10 @@ def reason(case: Case, reachable: float, median: float | None) -> tuple[str, str
     if np.isfinite(last) and parts["statistics"] + allowed**2 > left**2:
         missing = allowed**2 - (left**2 - parts["statistics"])
         more = parts["statistics"] / missing
-        return status, f"supply: the sample ends after {last / 86400:.3g} d and {said}; {more:.2g} times the sample cures it"
+        return (
+            status,
+            f"supply: the sample ends after {last / 86400:.3g} d and {said}; {more:.2g} times the sample cures it",
+        )
     return status, _floor(said, parts, allowed)
 
 

@@ -49,13 +49,18 @@ def spread(case: Case, values: Callable[[Realisation], Array], unit: str) -> Qua
     return positive(case.along.up_to(address, values), start, unit, nominal)
 
 
+def _true(scene: Scene) -> Array:
+    return scene.splitting_drawn
+
+
+def _seen(scene: Scene) -> Array:
+    return scene.sampled.factor * scene.splitting_drawn
+
+
 def splittings(case: Case) -> tuple[Quantiles, Quantiles]:
     """The true splitting and the splitting seen, Hz, signed."""
     results = []
-    for pivot, values in (
-        (case.full.splitting, lambda scene: scene.splitting_drawn),
-        (case.full.seen, lambda scene: scene.sampled.factor * scene.splitting_drawn),
-    ):
+    for pivot, values in ((case.full.splitting, _true), (case.full.seen, _seen)):
         nominal = finite(_number(values(case.nominal)))
         if pivot is None:
             found = plain(case.full.sample, values(case.full), "Hz", nominal)

@@ -12,7 +12,9 @@ MEDIAN, OTHER, PROBABILITY = 0.002, 0.01, 0.001  # relative, relative, absolute
 def unmet(result: ScenarioResult, tolerance: float) -> set[str]:
     """Which parts of the answer hold a number whose 95 % half-width exceeds the tolerance."""
     return {
-        name.split(".")[0] for name, error, allowed in _checked(result) if error is not None and error > allowed * tolerance
+        name.split(".")[0]
+        for name, error, allowed in _checked(result)
+        if error is not None and error > allowed * tolerance
     }
 
 

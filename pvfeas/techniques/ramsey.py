@@ -28,9 +28,7 @@ def both_states_uncertainty(contrast: Array, free_time: Array, molecules: Array,
     memory), 1/(2 pi C T sqrt N), and the read-out noise r (rms of the counted excited molecules).
     contrast: C at the read-out; free_time: T in s; molecules: N per cycle.
     """
-    return np.asarray(
-        np.sqrt(0.25 / molecules + (readout_noise / molecules) ** 2) / (np.pi * contrast * free_time)
-    )
+    return np.asarray(np.sqrt(0.25 / molecules + (readout_noise / molecules) ** 2) / (np.pi * contrast * free_time))
 
 
 def one_state_uncertainty(contrast: Array, free_time: Array, molecules: Array, readout_noise: Array) -> Array:
@@ -39,9 +37,7 @@ def one_state_uncertainty(contrast: Array, free_time: Array, molecules: Array, r
     sqrt(1/(2 N) + (r/N)^2)/(pi C T): sqrt 2 above both states, for the molecule number is not known
     (derived: counts at half height are Poisson with mean N/2). Arguments as for both states.
     """
-    return np.asarray(
-        np.sqrt(0.5 / molecules + (readout_noise / molecules) ** 2) / (np.pi * contrast * free_time)
-    )
+    return np.asarray(np.sqrt(0.5 / molecules + (readout_noise / molecules) ** 2) / (np.pi * contrast * free_time))
 
 
 @dataclass(frozen=True)
