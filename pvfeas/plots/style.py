@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 from typing import Any
 
 # Okabe & Ito's palette for colour-blind readers (2008, Color Universal Design), told apart by line style too.
@@ -18,6 +19,8 @@ DASHES: tuple[Any, ...] = (
 )
 SMALL, NORMAL = 7.0, 8.0
 GREY, DARK = "#8a8a8a", "#333333"
+SIGN = 0.034  # of the axis, the width of a sign of a tick's name
+LABEL_STEP = 0.05  # of the axis, the height of a line of a label
 SETTINGS: Any = {
     "font.family": "DejaVu Sans",
     "font.size": NORMAL,
@@ -70,10 +73,10 @@ def time_axis(axes: Any, low: float, high: float, label: str) -> None:
 
 
 def spaced(ticks: list[tuple[float, str]], length: float) -> list[tuple[float, str]]:
-    """Ticks that do not touch: at least a seventh of the axis apart."""
+    """Ticks whose names do not touch. length: of the axis, in ln t."""
     kept: list[tuple[float, str]] = []
     for at, name in ticks:
-        if not kept or math.log(at / kept[-1][0]) > length / 7.0:
+        if not kept or math.log(at / kept[-1][0]) / length > SIGN * (len(name) + len(kept[-1][1]) + 2) / 2.0:
             kept.append((at, name))
     return kept
 
@@ -113,21 +116,54 @@ def short_frequency(value: float) -> str:
     return f"{value:.2g} Hz"
 
 
-def apart(places: list[float], least: float) -> list[float]:
-    """Heights of labels moved as little as needed so that no two are closer than least."""
+def apart(places: list[float], least: list[float]) -> list[float]:
+    """Heights of labels, in shares of the axis, moved as little as needed so that none touch and none leave it.
+
+    least: the height of each label.
+    """
     order = sorted(range(len(places)), key=lambda i: places[i])
-    moved = [places[i] for i in order]
-    for _ in range(200):
+    bottom = [max(least[i] / 2.0 - LABEL_STEP / 2.0, 0.0) for i in order]
+    moved = [min(max(places[i], low), 1.0) for i, low in zip(order, bottom, strict=True)]
+    for _ in range(400):
         worst = 0.0
         for i in range(len(moved) - 1):
-            gap = least - (moved[i + 1] - moved[i])
+            gap = (least[order[i]] + least[order[i + 1]]) / 2.0 - (moved[i + 1] - moved[i])
             if gap > 1e-9:
-                moved[i] -= gap / 2.0
-                moved[i + 1] += gap / 2.0
-                worst = max(worst, gap)
+                moved[i], moved[i + 1], worst = moved[i] - gap / 2.0, moved[i + 1] + gap / 2.0, max(worst, gap)
+        moved = [min(max(one, low), 1.0) for one, low in zip(moved, bottom, strict=True)]
         if worst < 1e-6:
             break
-    found = [0.0] * len(places)
-    for rank, i in enumerate(order):
-        found[i] = moved[rank]
-    return found
+    return [moved[order.index(i)] for i in range(len(places))]
+
+
+def broken(name: str, longest: int = 14) -> str:
+    """A name on at most two lines, broken after an underscore, hyphen or blank where there is one."""
+    if len(name) <= longest:
+        return name
+    ends = [i + 1 for i, sign in enumerate(name) if sign in "_- " and i < longest]
+    at = ends[-1] if ends else longest
+    rest = name[at:] if len(name) - at <= longest else f"{name[at : at + longest - 1]}…"
+    return f"{name[:at].rstrip()}\n{rest}"
+
+
+@dataclass(frozen=True)
+class Label:
+    """A text at the right end of a panel, at a height in shares of the axis."""
+
+    height: float
+    text: str
+    shade: str
+
+
+def end_labels(axes: Any, labels: list[Label]) -> None:
+    """Texts at the right edge, none over another; a thin line leads from the height to a text that had to move."""
+    steps = [LABEL_STEP * (1 + one.text.count("\n")) for one in labels]
+    for one, height in zip(labels, apart([one.height for one in labels], steps), strict=True):
+        start = min(max(one.height, 0.0), 1.0)
+        axes.plot(
+            [1.0, 1.02], [start, height], transform=axes.transAxes, color=one.shade, linewidth=0.5, clip_on=False,
+        )  # fmt: skip
+        axes.annotate(
+            one.text, (1.02, height), xycoords="axes fraction", xytext=(2, 0), textcoords="offset points",
+            fontsize=SMALL, color=one.shade, va="center", annotation_clip=False, linespacing=1.0,
+        )  # fmt: skip
