@@ -14,7 +14,7 @@ from pvfeas.nominal import nominal_draws, stepped_draws
 from pvfeas.options import Options
 from pvfeas.problem import Problem, ScenarioProblem
 from pvfeas.questions import sections
-from pvfeas.questions.planning import Case, Plan, Sampling, chosen, samplings
+from pvfeas.questions.planning import Case, Plan, Sampling, adaptive, chosen, samplings
 from pvfeas.questions.reasons import limiting, reason
 from pvfeas.questions.tolerance import unmet
 from pvfeas.realisation import realise
@@ -45,18 +45,29 @@ def assess(
     planned = [Plan(problem, one) for one in scenarios]
     results: list[ScenarioResult | None] = [None] * len(planned)
     points, met = 0, False
-    for sampling in samplings(problem, options):
+    if options.method == "monte-carlo":
+        sampling, met = adaptive(problem, planned, options)
+        return _assessment(problem, options, [answer(sampling.case(one)) for one in planned], sampling.points, met)
+    for sampling in samplings(problem, options, planned):
         results = [better(sampling, *one, options.tolerance) for one in zip(planned, results, strict=True)]
         points, met = sampling.points, not any(one and unmet(one, options.tolerance) for one in results)
         if progress:
             progress(f"{points} points")
         if met:
             break
+    return _assessment(problem, options, [one for one in results if one], points, met)
+
+
+def _assessment(
+    problem: Problem, options: Options, results: Sequence[ScenarioResult], points: int, met: bool
+) -> Assessment:
+    names = [one.name for one in results]
+    scenarios = chosen(problem, names)
     return Assessment(
-        question={"name": "assess", "scenarios": [one.name for one in scenarios], **asdict(options)},
+        question={"name": "assess", "scenarios": names, **asdict(options)},
         title=problem.title, sha256=problem.sha256, seed=options.seed, points=points, method=options.method,
         tolerance_met=met, warnings=tuple(Warned(*one) for one in problem.warnings) + doubts(problem, scenarios),
-        scenarios=tuple(one for one in results if one),
+        scenarios=tuple(results),
     )  # fmt: skip
 
 

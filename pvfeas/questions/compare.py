@@ -51,7 +51,7 @@ def odds(problem: Problem, names: Sequence[str], options: Options) -> tuple[Odds
     """For each pair, the probability that one needs less wall time; joint draws, points doubling."""
     planned = [Plan(problem, one) for one in chosen(problem, names)]
     found: list[Odds] = []
-    for sampling in samplings(problem, options):
+    for sampling in samplings(problem, options, planned):
         found = [_pair(sampling, *two) for two in combinations(planned, 2)]
         if all(one.error <= PROBABILITY * options.tolerance for one in found):
             break

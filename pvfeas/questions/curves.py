@@ -25,8 +25,9 @@ LONGEST = 1e10  # s; no figure goes beyond three hundred years
 def curves(problem: Problem, names: Sequence[str] = (), options: Options | None = None) -> Curves:
     """Curves of the named scenarios on one sample of the study."""
     options = options or Options()
-    sampling = next(samplings(problem, options))
-    cases = [sampling.case(Plan(problem, one)) for one in chosen(problem, names)]
+    planned = [Plan(problem, one) for one in chosen(problem, names)]
+    sampling = next(samplings(problem, options, planned))
+    cases = [sampling.case(one) for one in planned]
     wall = wall_times(cases)
     return Curves(
         title=problem.title,

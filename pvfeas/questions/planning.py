@@ -23,12 +23,14 @@ from pvfeas.integration import (
     own_input,
 )
 from pvfeas.laws import Array
-from pvfeas.monte_carlo import pseudo_random_samples
+from pvfeas.monte_carlo import Trials, digits_of, most_batches, trials
 from pvfeas.nominal import nominal_draws
 from pvfeas.options import Options
 from pvfeas.points import Sample, draw
 from pvfeas.problem import Expression, Problem, ScenarioProblem
 from pvfeas.realisation import Realisation
+from pvfeas.required import required_wall_time
+from pvfeas.summaries import flattened
 
 FIRST, SMALL = 8, 5  # exponents of two: points per replicate to begin with, and for first guesses
 THINNER = 2  # along nodes the points are fewer by this exponent
@@ -146,11 +148,29 @@ class Case:
         return not isinstance(self.full.estimator.pivot, NoPivot)
 
 
-def samplings(problem: Problem, options: Options) -> Iterator[Sampling]:
-    """Ever larger samples of the study. The Monte-Carlo method (JCGM 101:2008, 7.9) integrates nothing exactly."""
+def adaptive(problem: Problem, planned: Sequence[Plan], options: Options) -> tuple[Sampling, bool]:
+    """As many batches as JCGM 101:2008, 7.9 asks for, and whether they were enough.
+
+    The model is ln(required time) of every scenario; draws that never reach the goal are not counted.
+    Nothing is integrated exactly.
+    """
+    digits, seen = digits_of(options.tolerance), [Trials() for _ in planned]
+    enough = False
+    for number in range(most_batches(options)):
+        batch = trials(problem, options.seed, [number])
+        for one, values in zip(planned, seen, strict=True):
+            scene = one.drawn(batch)
+            values.add(np.log(flattened(batch, required_wall_time(scene.sampled, one.rule, scene.signal_drawn))[0]))
+        enough = number > 0 and all(values.settled(digits) for values in seen)
+        if enough:
+            break
+    return Sampling(problem, options.seed, trials(problem, options.seed, range(number + 1))), enough
+
+
+def samplings(problem: Problem, options: Options, planned: Sequence[Plan]) -> Iterator[Sampling]:
+    """Ever larger samples of the study; one where the Monte-Carlo method is asked for."""
     if options.method == "monte-carlo":
-        for sample in pseudo_random_samples(problem, options):
-            yield Sampling(problem, options.seed, sample)
+        yield adaptive(problem, planned, options)[0]
         return
     exponent = FIRST
     while True:
