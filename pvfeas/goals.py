@@ -31,6 +31,7 @@ ONLY = {
     "looks": ("detect", "sign"),
 }
 EXAMPLES = {"significance": "5", "power": "0.9", "relative_uncertainty": "0.2"}
+LEAST_CONFIDENCE = 0.7  # of feldman-cousins-abs: below it small outcomes have no limit
 
 
 def plain_numbers(name: str, leaf: Leaf, key: Key, reader: Reader) -> dict[str, Any]:
@@ -101,6 +102,8 @@ def _rules(raw: Mapping[str, Any], made: Mapping[str, Any], absorbed: set[str]) 
         if key in raw and kind not in kinds:
             yield key, f"{key} in a goal of kind {kind!r}", f"it belongs to {' and '.join(kinds)}: drop it"
     construction, sides = made.get("construction"), made.get("sides", 2)
+    if construction == "feldman-cousins-abs" and made.get("confidence", 0.95) < LEAST_CONFIDENCE:
+        yield "confidence", f"{construction!r} below {LEAST_CONFIDENCE:g}", f"write at least {LEAST_CONFIDENCE:g}"
     if construction in SIGNED and sides == 2:
         yield "construction", f"{construction!r} with two sides", "it needs a predicted sign: write sides = 1"
     if construction is not None and construction not in SIGNED and sides == 1:

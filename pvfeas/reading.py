@@ -19,6 +19,7 @@ SORTS = {
     "choice": "a text in quotes", "choices": "a list of texts", "flag": "true or false",
     "integer": "a whole number", "text": "a text in quotes",
 }  # fmt: skip
+OF_A_QUANTITY = ("source", "status", "note", "demonstrated")
 
 
 class Reader:
@@ -71,6 +72,10 @@ class Reader:
         near = suggest(name, [one for one in keys if one != "name"])
         if name in later_keys(table, kind):
             self.complain(first, f"the key {name!r} {LATER}", "drop it for now")
+            return set()
+        if name in OF_A_QUANTITY and not near:
+            what = 'write it with its quantity: size = { value = "0.1 Hz", source = "…", status = "assumed" }'
+            self.complain(first, f"the key {name!r} stands beside a quantity here", what)
             return set()
         known = ", ".join(one for one in keys if one != "name")
         self.complain(

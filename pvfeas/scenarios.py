@@ -174,6 +174,9 @@ def _averages(table: Table, entry: Node, address: str, line: int, parent: Any, r
         reader.faults.add(
             line, f"{address}.{needed}", "is missing", f'averages = "{how}" needs it: write {needed} = "1 d"'
         )
+    on = entry.get("on")
+    if how == "grows" and isinstance(on, Leaf) and on.value == "scale":
+        reader.complain(on, 'on = "scale" with averages = "grows"', "give the size in Hz, or another way to average")
     for key, ways in (("every", ("per reset",)), ("after", ("as 1/t", "grows"))):
         if key in entry and how is not None and how not in ways:
             leaf = entry[key]
