@@ -12,7 +12,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,6 +27,8 @@ Interval = tuple[Array, Array]  # open (lower, upper) in Hz, ends may be infinit
 
 NODES: Array = np.arange(-6.5, 6.5001, 0.5)
 AROUND: Integers = np.arange(-2, 4)[:, None]  # the neighbours of an interval between nodes
+HERE = 2  # place in AROUND of its first node
+FAR = 60.0  # logarithms differ by less wherever it matters
 
 
 class Pivot(Protocol):
@@ -144,16 +146,20 @@ class NodePivot:
 
     def probability(self, intervals: Sequence[Interval]) -> Array:
         """Normal probability of the scores at which the signal lies in an interval; the node axis is gone."""
+        ends = [pair for low, high in intervals for pair in ((self.signal, low), (high, self.signal))]
+        beyond = [np.asarray(greater > smaller) for greater, smaller in ends]
         inside: Booleans = np.zeros((), dtype=bool)
-        for lower, upper in intervals:
-            inside = inside | ((self.signal > lower) & (self.signal < upper))
+        for i in range(0, len(beyond), 2):
+            inside = inside | (beyond[i] & beyond[i + 1])
 
         def margin(at: Index) -> Array:
-            signal = _at(self.signal, inside.shape, at)
-            ends = [(_at(lower, inside.shape, at), _at(upper, inside.shape, at)) for lower, upper in intervals]
-            return np.asarray(
-                np.max([np.minimum(excess(signal, low), excess(high, signal)) for low, high in ends], axis=0)
-            )
+            found: Array = np.zeros(())
+            for (greater, smaller), flags in zip(ends, beyond, strict=True):
+                flag = _at(flags, inside.shape, at)
+                crossed = flag[HERE] != flag[HERE + 1]  # this end is the one that is crossed
+                one = lead(_at(greater, inside.shape, at), _at(smaller, inside.shape, at))
+                found = np.where(crossed, one, found)
+            return found
 
         return along_nodes(inside, margin, self.axis)
 
@@ -170,13 +176,30 @@ class NodeValues:
         inside = np.asarray(self.values < value)
 
         def margin(at: Index) -> Array:
-            return excess(_at(value, inside.shape, at), _at(self.values, inside.shape, at))
+            return lead(_at(value, inside.shape, at), _at(self.values, inside.shape, at))
 
         return along_nodes(inside, margin, self.axis)
 
 
-def _at(values: Array, shape: tuple[int, ...], at: Index) -> Array:
+def _at(values: NDArray[Any], shape: tuple[int, ...], at: Index) -> NDArray[Any]:
     return np.asarray(np.broadcast_to(values, shape)[at])
+
+
+def lead(first: Array, second: Array) -> Array:
+    """By how much first is more than second at neighbouring nodes (first axis), fit for interpolation.
+
+    Where all neighbours have one sign the difference of the logarithms, which is linear in the score of a
+    lognormal law; else the plain difference over its largest size, linear for a normal one. Infinities are cut.
+    """
+    with np.errstate(invalid="ignore", divide="ignore"):
+        logarithms = np.log(np.abs(first)) - np.log(np.abs(second))
+        plain = first - second
+        alike = np.all(first > 0, axis=0) & np.all(second > 0, axis=0)
+        opposite = np.all(first < 0, axis=0) & np.all(second < 0, axis=0)
+    largest = np.max(np.where(np.isfinite(plain), np.abs(plain), 0.0), axis=0)
+    scaled = plain / np.where(largest > 0, largest, 1.0)
+    found = np.where(alike, logarithms, np.where(opposite, -logarithms, scaled))
+    return np.asarray(np.clip(np.nan_to_num(found, nan=-FAR, posinf=FAR, neginf=-FAR), -FAR, FAR))
 
 
 def excess(first: Array, second: Array) -> Array:
@@ -193,9 +216,9 @@ def excess(first: Array, second: Array) -> Array:
 def along_nodes(inside: Booleans, margin: Callable[[Index], Array], axis: int) -> Array:
     """Probability of the scores for which something is inside, known at NODES along one axis, which goes.
 
-    margin: how far inside, at any index, positive where inside. Between two nodes of different kind
-    its root is found by cubic Hermite interpolation, slopes from five-point differences where there
-    are five points, else from three or two.
+    margin: how far inside, at the indices of the neighbours in AROUND, positive where inside. Between two
+    nodes of different kind its root is found by cubic Hermite interpolation, slopes from five-point
+    differences where there are five points, else from three or two.
     """
     axis += inside.ndim
     if inside.shape[axis] == 1:  # the pivot makes no difference here

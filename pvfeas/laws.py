@@ -340,12 +340,19 @@ class Truncated(_Uniformed):
 
     def quantile(self, probability: ArrayLike) -> Array:
         """The base's value at the probability that is left, from the nearer tail."""
-        u = np.asarray(probability)
+        u = np.asarray(probability, dtype=float)
+        return self._from_tails(u, 1.0 - u)
+
+    def from_score(self, score: ArrayLike) -> Array:
+        """The value at standard normal score z."""
+        z = np.asarray(score, dtype=float)
+        return self._from_tails(special.ndtr(z), special.ndtr(-z))
+
+    def _from_tails(self, below: Array, above: Array) -> Array:
         low, high = float(self.base.below(self.lower)), float(self.base.above(self.upper))
         kept = 1.0 - low - high
-        from_top = -special.ndtri(high + (1.0 - u) * kept)
-        from_bottom = special.ndtri(low + u * kept)
-        return np.clip(self.base.from_score(np.where(u > 0.5, from_top, from_bottom)), self.lower, self.upper)
+        from_top, from_bottom = -special.ndtri(high + above * kept), special.ndtri(low + below * kept)
+        return np.clip(self.base.from_score(np.where(below > 0.5, from_top, from_bottom)), self.lower, self.upper)
 
     def below(self, value: ArrayLike) -> Array:
         """P(x < value)."""

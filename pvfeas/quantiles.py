@@ -72,7 +72,7 @@ def _roots(distribution: Distribution, wanted: Array, x: Array, spread: float) -
         proposal = np.where(settled, x, _next(x, miss, density, step, low, high))
         new = distribution(np.exp(proposal))
         new_pooled = new.mean(axis=-1)
-        with np.errstate(divide="ignore", invalid="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
             slope = (new_pooled - pooled) / (proposal - x)
         moved = proposal != x
         density = np.where(moved & (slope > 0), slope, np.where(moved, 0.0, density))
@@ -84,7 +84,7 @@ def _roots(distribution: Distribution, wanted: Array, x: Array, spread: float) -
 
 def _next(x: Array, miss: Array, density: Array, step: float, low: Array, high: Array) -> Array:
     """The secant step where it stays inside the bracket, else its middle, else a step towards the root."""
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         change = np.where(density > 0, -miss / density, -np.sign(miss) * step)
     change = np.where(np.abs(change) < 1e-9, np.where(miss > 0, -1e-9, 1e-9), change).clip(-4.0, 4.0)
     wanted = x + change

@@ -8,7 +8,7 @@ from itertools import combinations
 
 import numpy as np
 
-from pvfeas.conditional import Booleans, along_nodes, excess
+from pvfeas.conditional import FAR, Booleans, along_nodes
 from pvfeas.errors import UsageError
 from pvfeas.integration import draws_along, node_axis
 from pvfeas.laws import Array
@@ -118,12 +118,19 @@ def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Bo
     signal = {one: real[one].factor * one.target.at(draws) for one in (lead, other)}
     size = {one: counted(one.rule, signal[one]) for one in (lead, other)}
     at = required_wall_time(real[other], other.rule, signal[other])
-    ahead = excess(size[lead], needed_at(real[lead], lead.rule, at))
-    lacking = [excess(needed_at(real[one], one.rule, np.asarray(np.inf)), size[one]) for one in (lead, other)]
+    ahead = more(size[lead], needed_at(real[lead], lead.rule, at))
+    lacking = [more(needed_at(real[one], one.rule, np.asarray(np.inf)), size[one]) for one in (lead, other)]
     neither = np.minimum(*lacking)
     same = np.where((np.abs(ahead) <= SAME) & np.isfinite(at), 1.0, -1.0)
     margins = [np.asarray(one) for one in np.broadcast_arrays(np.where(same > 0, -SAME, ahead), neither, same)]
     return [one > 0 for one in margins], margins
+
+
+def more(first: Array, second: Array) -> Array:
+    """ln first - ln second for numbers that cannot be negative, cut to what matters; below zero where in doubt."""
+    with np.errstate(invalid="ignore", divide="ignore"):
+        found = np.log(np.maximum(first, 0.0)) - np.log(np.maximum(second, 0.0))
+    return np.asarray(np.clip(np.nan_to_num(found, nan=-FAR, posinf=FAR, neginf=-FAR), -FAR, FAR))
 
 
 def _number(values: Array) -> float:
