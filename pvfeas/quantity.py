@@ -179,6 +179,8 @@ def _bracket(match: re.Match[str], canonical: Canonical) -> Read:
 def _spread(sd: float, text: str) -> float:
     if sd <= 0.0:
         raise QuantityError(f'the spread in "{text}" is not positive', "leave an exact value without a spread")
+    if not sd < 1e300:
+        raise QuantityError("the spread is out of any range", "a number between 1e-300 and 1e300 is needed")
     return sd
 
 
