@@ -13,7 +13,7 @@ from pvfeas.commands.shared import emit
     "--to", "units", multiple=True, metavar="UNIT", help="Unit wanted; may be repeated. All of them if left out."
 )
 @click.option("--minus", metavar="VALUE", help="Subtract this value first, at full precision.")
-@click.option("--digits", default=12, show_default=True, type=click.IntRange(1, 50))
+@click.option("--digits", default=12, show_default=True, type=click.IntRange(1, 50), help="Significant digits.")
 def command(value: str, units: tuple[str, ...], minus: str | None, digits: int) -> int:
     """Convert a frequency or energy VALUE such as "6.2 aeV" into other units."""
     from pvfeas.energy import TARGETS, convert, difference

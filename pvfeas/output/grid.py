@@ -5,7 +5,7 @@ from __future__ import annotations
 import io
 from collections.abc import Sequence
 
-GAP = 2  # blanks between columns
+GAP = 3  # blanks between columns
 Cells = Sequence[str]
 
 

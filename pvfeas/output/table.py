@@ -156,16 +156,22 @@ def _differences(names: Sequence[str], found: Sequence[Difference], width: int, 
 
 
 def _odds(odds: Sequence[Odds], width: int, colour: bool) -> str:
-    rows = [
-        [
-            f"{one.first} : {one.second}", share(one.first_sooner), share(one.second_sooner), share(one.neither),
-            error_text(one.error), "-" if one.nominal_ratio is None else short(digits(one.nominal_ratio)),
-        ]
-        for one in odds
-    ]  # fmt: skip
+    rows = [row for one in odds for row in _pair(one, width)]
     header = ["pair", "first sooner", "second sooner", "neither", "error", "time ratio"]
     said = wrapped(
         "Odds of the smaller required time, drawn together (neither: both unreachable; time ratio: second over first, "
         "inputs at their medians):", min(width, MOST),
     )  # fmt: skip
     return f"{said}\n\n{grid(header, rows, width, colour)}"
+
+
+def _pair(one: Odds, width: int) -> list[list[str]]:
+    """The row of a pair; two rows where the names are long."""
+    cells = [
+        share(one.first_sooner), share(one.second_sooner), share(one.neither), error_text(one.error),
+        "-" if one.nominal_ratio is None else short(digits(one.nominal_ratio)),
+    ]  # fmt: skip
+    label = f"{one.first} : {one.second}"
+    if len(label) <= width // 3:
+        return [[label, *cells]]
+    return [[f"{one.first} :", *[""] * len(cells)], [f"  {one.second}", *cells]]

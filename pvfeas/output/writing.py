@@ -15,8 +15,7 @@ from pvfeas.errors import UsageError
 def write_bytes(target: str, data: bytes) -> None:
     """Write to a file or, with "-", to standard output. UsageError where that is not possible."""
     if target == "-":
-        sys.stdout.buffer.write(data)
-        sys.stdout.buffer.flush()
+        _to_standard_output(data)
         return
     path = Path(target)
     try:
@@ -27,6 +26,15 @@ def write_bytes(target: str, data: bytes) -> None:
         _replace(Path(os.path.realpath(path)), data)
     except OSError as error:
         raise UsageError(f"{target} cannot be written: {(error.strerror or 'unknown reason').lower()}") from None
+
+
+def _to_standard_output(data: bytes) -> None:
+    """Write and flush; a reader that has gone is no error."""
+    try:
+        sys.stdout.buffer.write(data)
+        sys.stdout.buffer.flush()
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _replace(path: Path, data: bytes) -> None:
