@@ -42,11 +42,13 @@ def test_stated_error_covers(problem: Problem) -> None:
 
 
 def test_monte_carlo_method_agrees(problem: Problem) -> None:
-    found = assess(problem, Options(method="monte-carlo", maximum_points=65536)).scenarios[0].required_time
+    """Two digits of u(ln t); quantiles within two half-widths, the probability within four standard errors."""
+    result = assess(problem, Options(method="monte-carlo", tolerance=0.1, maximum_points=65536))
+    found = result.scenarios[0].required_time
     for name in ("q16", "q50", "q84"):
         exact = EXACT_DAYS[name] * SCALE * DAY
         assert abs(getattr(found, name) - exact) <= 2.0 * found.error[name], name
-    assert found.in_time == pytest.approx(EXACT_IN_30_DAYS, abs=4 * np.sqrt(0.25 / 320_000))
+    assert found.in_time == pytest.approx(EXACT_IN_30_DAYS, abs=4 * np.sqrt(0.25 / result.points))
 
 
 def test_linear_law_is_far_off_in_the_tail(problem: Problem) -> None:
