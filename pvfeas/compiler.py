@@ -24,6 +24,7 @@ from pvfeas.vocabulary import HWHM, SPLITTING
 
 MOST_INPUTS, MOST_STRATA = 500, 1024
 LONGEST_CHAIN = 50  # references that lead to references
+ABOVE_ZERO = Bounds(lower=0.0, lower_open=True)
 Warning_ = tuple[str, str, str]
 
 
@@ -179,6 +180,9 @@ class Compiler:
                 self.pass_to(factor, f"{address}.times[{place}]", bounds, (*way, address))
             if quantity.discrepancy is not None:
                 self.pass_to(quantity.discrepancy, f"{address}.discrepancy", bounds, (*way, address))
+        for place, scale in enumerate(quantity.scale):
+            for part, one in (("with", scale.with_), ("from", scale.from_)):
+                self.pass_to(one, f"{address}.scale[{place}].{part}", ABOVE_ZERO, (*way, address))
         self.pass_to(quantity, address, bounds, (*way, address))
 
     def pass_to(self, quantity: Quantity, address: str, bounds: Bounds, way: tuple[str, ...]) -> None:
@@ -334,6 +338,7 @@ class Compiler:
         return inside
 
     def warn(self, code: str, address: str, message: str) -> None:
-        """A doubt that travels with every result."""
+        """A doubt that travels with every result, said once where the quantity was written first."""
+        address = self.places.origin(address)
         if (code, address, message) not in self.warnings:
             self.warnings.append((code, address, message))

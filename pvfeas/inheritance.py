@@ -62,10 +62,10 @@ def _grow(value: Any, key: str, path: Path, address: str, lines: Mapping[Path, i
 
 
 def _branch(value: Any, depth: int, path: Path, address: str, lines: Mapping[Path, int], file: str) -> Any:
+    if depth > 0 and isinstance(value, Set) and isinstance(value.value, dict):
+        value = {key: Set(inner) for key, inner in value.value.items()}
     if depth == 0 or not isinstance(value, dict):
-        found = value.file if isinstance(value, Set) else file
-        line = 0 if isinstance(value, Set) else lines.get(path, 0)
-        return Leaf(value.value if isinstance(value, Set) else value, address, line, found)
+        return leaf(value, address, lines.get(path, 0), file)
     return {
         key: _branch(inner, depth - 1, (*path, key), f"{address}.{key}", lines, file) for key, inner in value.items()
     }
@@ -76,7 +76,16 @@ class Set:
     """A value given by --set."""
 
     value: Any
-    file: str = COMMAND_LINE
+
+
+def leaf(value: Any, address: str, line: int, file: str) -> Leaf:
+    """A leaf of the file, or of the command line where --set gave it or a part of it."""
+    if isinstance(value, Set):
+        return Leaf(value.value, address, 0, COMMAND_LINE)
+    if isinstance(value, dict) and any(isinstance(inner, Set) for inner in value.values()):
+        parts = {key: inner.value if isinstance(inner, Set) else inner for key, inner in value.items()}
+        return Leaf(parts | {"status": "assumed", "source": "command line"}, address, 0, COMMAND_LINE)
+    return Leaf(value, address, line, file)
 
 
 def merge(parent: Node, child: Node, key: str = "") -> Node:

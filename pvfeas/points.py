@@ -150,22 +150,25 @@ def from_uniforms(
     inputs: Sequence[Input], correlations: Sequence[Correlation], points: Draws, shape: tuple[int, int]
 ) -> Sample:
     """The sample that belongs to given uniform points, one array (replicates, points) per uncertain input."""
+    groups, weights = groups_of(inputs)
+    # an axis of length one per group: a scenario without an ensemble may stand beside one that has it
+    points = {address: uniform.reshape((1,) * len(groups) + uniform.shape) for address, uniform in points.items()}
     scores = {address: np.asarray(special.ndtri(uniform)) for address, uniform in points.items()}
     independent = dict(scores)
     for address, row in correlation_root(sorted(points), correlations).items():
         scores[address] = sum((factor * independent[other] for other, factor in row.items()), np.zeros(()))
     tied = {address for one in correlations for address in one.between}
-    groups, weights = groups_of(inputs)
     draws: dict[str, Array] = {}
     for one in inputs:
         if isinstance(one.law, Ensemble):
-            draws[one.address] = _members(one.law, groups, scores.get(one.address))
+            score = scores.get(one.address)
+            draws[one.address] = _members(one.law, groups, None if score is None else score.reshape(score.shape[-2:]))
         elif one.address in points and one.address not in tied and not hasattr(one.law, "score"):
             draws[one.address] = one.law.quantile(points[one.address])
         elif one.address in points:
             draws[one.address] = one.law.from_score(scores[one.address])
         else:
-            draws[one.address] = np.asarray(one.law.median)
+            draws[one.address] = np.full((1,) * (len(groups) + 2) if groups else (), one.law.median)
     return Sample(draws, scores, groups, weights, shape)
 
 

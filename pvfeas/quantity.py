@@ -17,10 +17,12 @@ from pvfeas.laws import Exact, Law, Lognormal, LogUniform, Normal, TwoPiece, Uni
 from pvfeas.units import NO_UNIT, TABLES, any_unit, dimension_of, tidy, unit_factor, wanted
 
 LONGEST = 1000  # characters
-NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)"
-EXPONENT = r"(?:[eE][+-]?\d{1,3})?"
+MOST, LEAST = 1e300, 1e-300  # sizes of numbers
+# possessive: a wrong text of any length is refused at once; a point before a point belongs to ".."
+NUMBER = r"[+-]?(?:\d++(?:\.(?!\.)\d*+)?+|\.\d++)"
+EXPONENT = r"(?:[eE][+-]?\d{1,3}+)?+"
 VALUE = rf"{NUMBER}{EXPONENT}"
-UNIT = r"[^\d\s+±].*?|%|1/.*?|"
+UNIT = r"(?!log\b)[^\d\s+±].*?|1/.*?|"
 BRACKET = re.compile(rf"(?P<number>{NUMBER})\((?P<spread>\d+\.?\d*|\.\d+)\)(?P<exponent>{EXPONENT})\s*(?P<unit>{UNIT})")
 PLUS_MINUS = re.compile(
     rf"(?P<value>{VALUE})\s*(?P<unit>{UNIT})\s*(?:±|\+/-|\+-)\s*(?P<spread>{VALUE})\s*(?P<other>{UNIT})"
@@ -31,7 +33,7 @@ RANGE = re.compile(
     rf"(?P<low>{VALUE})\s*(?P<first>{UNIT})\s*\.\.\s*(?P<high>{VALUE})\s*(?P<unit>{UNIT})(?P<log>\s+log)?"
 )
 SINGLE = re.compile(rf"(?P<value>{VALUE})\s*(?P<unit>{UNIT})")
-REFERENCE = re.compile(r"@(?P<name>[A-Za-z_][\w.-]*)")
+REFERENCE = re.compile(r"@(?P<name>[\w-][\w.-]*)")
 FORMS = 'write for example "60 kHz", "60(5) kHz", "60 ± 5 kHz", "2 Hz ×/ 1.5", "1 .. 5 Hz" or "@name"'
 
 
@@ -82,36 +84,58 @@ class Quantity:
         """The value as written, for tables."""
         if isinstance(self.written, dict):
             inner = self.written.get("value")
-            return str(inner) if inner is not None else "{" + ", ".join(self.written) + "}"
+            if inner is None:
+                return "{" + ", ".join(self.written) + "}"
+            return f"{inner} {self.written['unit']}" if "unit" in self.written else str(inner)
         return str(self.written)
 
 
-class Canonical:
-    """What units a number is read in: one canonical unit, FWHM too, or anything (parts of products)."""
+Dimension = tuple[tuple[str, float], ...]
+FWHM: Dimension = (("FWHM", 1.0),)
 
-    def __init__(self, unit: str, along_line: bool = False) -> None:
+
+class Canonical:
+    """What units a number is read in: one canonical unit, FWHM too, or anything (parts of products).
+
+    behind: the unit that a table gives apart from its value.
+    """
+
+    def __init__(self, unit: str, along_line: bool = False, behind: str = "") -> None:
         self.unit = unit
         self.along_line = along_line
+        self.behind = tidy(behind)
 
-    def factor(self, text: str) -> tuple[float, bool, tuple[tuple[str, float], ...] | None]:
+    def factor(self, text: str) -> tuple[float, bool, Dimension | None]:
         """Factor, whether it is FWHM, and the dimension where that is open."""
+        if text and self.behind:
+            raise QuantityError(f"a unit in the value and {self.behind!r} in unit", "write the unit once")
+        text = text or self.behind
         if self.unit == "*":
             factor, dimension = any_unit(text)
             return factor, False, dimension
         if self.along_line and text.strip().upper() == "FWHM":
-            return 1.0, True, None
+            return 1.0, True, FWHM
         return unit_factor(text, self.unit), False, dimension_of(self.unit) if self.unit in TABLES else None
+
+    def factors(self, one: str, other: str) -> tuple[float, float, bool, Dimension | None]:
+        """The factors of two numbers of one quantity; a number without a unit has that of its partner."""
+        first, second = self.factor(one or other), self.factor(other or one)
+        if first[1:] != second[1:]:
+            raise QuantityError(f"{one!r} beside {other!r}", "both numbers need units of one kind")
+        return first[0], *second
 
 
 def _clean(text: str) -> str:
-    return tidy(text).replace("\u2009", " ").replace("\u00a0", " ")
+    """Single spaces, whatever they were."""
+    return " ".join(tidy(text).split())
 
 
-def _number(text: str) -> float:
+def _number(text: str, factor: float = 1.0) -> float:
+    """The number times the factor of its unit, both inside the range of what can be computed with."""
     value = float(text)
-    if abs(value) > 1e300 or (value != 0 and abs(value) < 1e-300):
+    if Decimal(text) and not all(LEAST <= abs(one) <= MOST for one in (value, value * factor)):
         raise QuantityError(f"{text} is out of any range", "a number between 1e-300 and 1e300 is needed")
-    return value
+    return value * factor
 
 
 def parse_text(text: str, canonical: Canonical) -> Quantity:
@@ -125,6 +149,8 @@ def parse_text(text: str, canonical: Canonical) -> Quantity:
         match = REFERENCE.fullmatch(clean)
         if match is None:
             raise QuantityError(f'"{text}" is no reference', 'a reference reads "@name" or "@scenario.table.key"')
+        if canonical.behind:
+            raise QuantityError(f'"{text}" with a unit', "a reference has its own: drop unit")
         return Quantity(text, reference=match["name"])
     if re.search(r"\d,\d", clean):
         raise QuantityError(f'"{text}" has a comma', "write the decimal point as a point and no thousands separators")
@@ -136,7 +162,7 @@ def parse_text(text: str, canonical: Canonical) -> Quantity:
     raise QuantityError(f'"{text}" cannot be read', _why(clean))
 
 
-Read = tuple[Law, bool, tuple[tuple[str, float], ...] | None]
+Read = tuple[Law, bool, Dimension | None]
 Reader = Callable[[re.Match[str], Canonical], Read]
 
 
@@ -163,7 +189,7 @@ def _why(text: str) -> str:
 
 def _exact(match: re.Match[str], canonical: Canonical) -> Read:
     factor, along, dimension = canonical.factor(match["unit"])
-    return Exact(_number(match["value"]) * factor), along, dimension
+    return Exact(_number(match["value"], factor)), along, dimension
 
 
 def _bracket(match: re.Match[str], canonical: Canonical) -> Read:
@@ -172,8 +198,8 @@ def _bracket(match: re.Match[str], canonical: Canonical) -> Read:
     power = Decimal("1" + (match["exponent"] or ""))
     decimals = len(number.partition(".")[2])
     unit = Decimal(1) if "." in spread else Decimal(1).scaleb(-decimals)
-    sd = float(Decimal(spread) * unit * power) * factor
-    return Normal(_number(str(Decimal(number) * power)) * factor, _spread(sd, match[0])), along, dimension
+    sd = _number(str(Decimal(spread) * unit * power), factor)
+    return Normal(_number(str(Decimal(number) * power), factor), _spread(sd, match[0])), along, dimension
 
 
 def _spread(sd: float, text: str) -> float:
@@ -186,40 +212,39 @@ def _spread(sd: float, text: str) -> float:
 
 def _plus_minus(match: re.Match[str], canonical: Canonical) -> Read:
     first, other = match["unit"], match["other"]
-    value, spread = _number(match["value"]), _number(match["spread"])
-    if other == "%" and not first and canonical.unit in ("1", "*"):
+    if other == "%" and not first and canonical.behind in ("", "%") and canonical.unit in ("1", "*"):
         raise QuantityError(f'"{match[0]}" can be read in two ways', 'write "80(6)" or "5 % ± 1 %"')
     if other == "%" and first != "%":
         factor, along, dimension = canonical.factor(first)
-        sd = _spread(abs(value) * spread / 100.0, match[0]) * factor
-        return Normal(value * factor, sd, relative=True), along, dimension
-    factor, along, dimension = canonical.factor(first or other)
-    inner = canonical.factor(other)[0] if other else factor
-    return Normal(value * factor, _spread(spread, match[0]) * inner), along, dimension
+        value = _number(match["value"], factor)
+        sd = _spread(abs(value) * _number(match["spread"]) / 100.0, match[0])
+        return Normal(value, sd, relative=True), along, dimension
+    factor, inner, along, dimension = canonical.factors(first, other)
+    sd = _spread(_number(match["spread"], inner), match[0])
+    return Normal(_number(match["value"], factor), sd), along, dimension
 
 
 def _two_piece(match: re.Match[str], canonical: Canonical) -> Read:
     factor, along, dimension = canonical.factor(match["unit"])
-    minus, plus = _spread(_number(match["minus"]), match[0]), _spread(_number(match["plus"]), match[0])
-    return TwoPiece(_number(match["value"]) * factor, minus * factor, plus * factor), along, dimension
+    minus, plus = (_spread(_number(match[side], factor), match[0]) for side in ("minus", "plus"))
+    return TwoPiece(_number(match["value"], factor), minus, plus), along, dimension
 
 
 def _factor(match: re.Match[str], canonical: Canonical) -> Read:
     factor, along, dimension = canonical.factor(match["unit"])
-    value, spread = _number(match["value"]), _number(match["factor"])
+    value, spread = _number(match["value"], factor), _number(match["factor"])
     if value == 0.0:
         raise QuantityError(f'"{match[0]}" spreads zero by a factor', "a factor needs a median other than zero")
     if spread <= 1.0:
         raise QuantityError(
             f'the factor {match["factor"]} in "{match[0]}"', "a factor above 1 is needed, such as ×/ 1.5"
         )
-    return Lognormal(value * factor, spread), along, dimension
+    return Lognormal(value, spread), along, dimension
 
 
 def _range(match: re.Match[str], canonical: Canonical) -> Read:
-    factor, along, dimension = canonical.factor(match["unit"])
-    inner = canonical.factor(match["first"])[0] if match["first"] else factor
-    low, high = _number(match["low"]) * inner, _number(match["high"]) * factor
+    inner, factor, along, dimension = canonical.factors(match["first"], match["unit"])
+    low, high = _number(match["low"], inner), _number(match["high"], factor)
     if low >= high:
         raise QuantityError(f'the range "{match[0]}" does not rise', "write the smaller end first")
     if match["log"]:
@@ -239,26 +264,29 @@ READERS = (
 )
 
 
-def parse(written: Any, unit: str, along_line: bool = False, splitting: bool = False) -> Quantity:
+def parse(written: Any, unit: str, along_line: bool = False, splitting: bool = False, behind: str = "") -> Quantity:
     """Read a quantity as it stands in a study: a text, a number, a table.
 
-    unit: the canonical unit, "*" for any; along_line: FWHM is allowed; splitting: the table may say `of`.
+    unit: the canonical unit, "*" for any; along_line: FWHM is allowed; splitting: the table may say `of`;
+    behind: the unit where it stands apart from the value.
     """
     from pvfeas.quantity_table import parse_table
 
-    canonical = Canonical(unit, along_line)
+    canonical = Canonical(unit, along_line, behind)
     if isinstance(written, Quantity):
         return written
     if isinstance(written, bool):
         raise QuantityError(f"{str(written).lower()} is no quantity", wanted(unit))
-    if isinstance(written, int | float):
+    if isinstance(written, int) and abs(written) > MOST:
+        raise QuantityError("a whole number above 1e300", "a number between 1e-300 and 1e300 is needed")
+    if isinstance(written, int | float) and not behind:
         if unit not in ("1", "*"):
             raise QuantityError(f"the number {written} has no unit", wanted(unit) + ", in quotes")
-        if not abs(written) <= 1e300:
+        if not abs(written) <= MOST:
             raise QuantityError(f"{written} is no finite number", "a finite number is needed")
         return Quantity(written, law=Exact(float(written)), dimension=())
-    if isinstance(written, str):
-        return parse_text(written, canonical)
+    if isinstance(written, int | float | str):
+        return parse_text(str(written), canonical)
     if isinstance(written, dict):
         return parse_table(written, canonical, splitting)
     raise QuantityError(f"{type(written).__name__} is no quantity", FORMS)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 import mpmath
@@ -10,9 +11,9 @@ from scipy import special
 
 from pvfeas.errors import QuantityError
 from pvfeas.laws import Exact, Law, Lognormal, Normal
-from pvfeas.quantity import SINGLE, Canonical, Quantity, Scale, parse
+from pvfeas.quantity import LEAST, MOST, SINGLE, Canonical, Quantity, Scale, parse
 from pvfeas.suggestions import did_you_mean
-from pvfeas.units import TABLES, tidy
+from pvfeas.units import TABLES, dimension_of, tidy
 
 STATUSES = ("measured", "demonstrated", "extrapolated", "assumed")
 PERCENTILES = {
@@ -86,9 +87,13 @@ def _texts(table: dict[str, Any]) -> None:
         )
     if "group" in table and "values" not in table:
         raise QuantityError("group without values", "group ties ensembles: give values = {…}")
-    for key, partner in (("weights", "values"), ("discrepancy", "values"), ("law", None), ("unit", None)):
-        if key in table and partner and partner not in table:
+    for key, partner in (("weights", "values"), ("discrepancy", "values")):
+        if key in table and partner not in table:
             raise QuantityError(f"{key} without {partner}", f"{key} belongs to {partner}")
+    if "law" in table and not any(key in PERCENTILES for key in table):
+        raise QuantityError("law without percentiles", "law belongs to a pair such as p05 and p95: drop it", "law")
+    if "unit" in table and "difference" in table:
+        raise QuantityError("unit beside difference", "write each of the two values with its own unit", "unit")
 
 
 def _flag(table: dict[str, Any]) -> bool:
@@ -115,10 +120,8 @@ def _value(written: Any, table: dict[str, Any], canonical: Canonical, key: str) 
         raise QuantityError(f"{_short(unit)} is no unit", "a text in quotes is needed", "unit")
     if isinstance(written, dict):
         raise QuantityError("a table", "a text or a number is needed", key)
-    if unit is not None:
-        written = f"{written} {unit}"
     try:
-        return parse(written, canonical.unit, canonical.along_line)
+        return parse(written, canonical.unit, canonical.along_line, behind=unit or "")
     except QuantityError as error:
         raise inside(key, error) from None
 
@@ -185,20 +188,26 @@ def _percentiles(table: dict[str, Any], canonical: Canonical) -> Quantity:
         raise QuantityError(
             f"the percentiles {', '.join(sorted(given))}", "a pair is needed: p05 and p95, p16 and p84, …"
         )
-    ends = []
-    for key in pair:
-        law = _value(table[key], table, canonical, key).law
-        if not isinstance(law, Exact):
+    ends, read = [], [_value(table[key], table, canonical, key) for key in pair]
+    for key, end in zip(pair, read, strict=True):
+        if not isinstance(end.law, Exact):
             raise QuantityError(
                 f"{_short(table[key])} is not exact", "an exact value is needed in a pair of percentiles", key
             )
-        ends.append(law.value)
+        ends.append(end.law.value)
+    _of_one_kind(read, pair[1])
     name = table.get("law", "lognormal" if ends[0] > 0 else "normal")
     if name not in ("normal", "lognormal"):
         raise QuantityError(f"{_short(name)} is no law here", "normal or lognormal is needed", "law")
     if ends[0] >= ends[1]:
         raise QuantityError(f"{pair[0]} is not below {pair[1]}", "the percentiles must rise")
-    return Quantity(table, law=_between(name, ends, float(special.ndtri(PERCENTILES[pair[1]]))))
+    law = _between(name, ends, float(special.ndtri(PERCENTILES[pair[1]])))
+    return Quantity(table, law=law, along_line=read[0].along_line, dimension=read[0].dimension)
+
+
+def _of_one_kind(read: Sequence[Quantity], key: str) -> None:
+    if len({(one.along_line, one.dimension) for one in read}) > 1:
+        raise QuantityError("units of different kinds", "all values of one quantity need units of one kind", key)
 
 
 def _between(name: str, ends: list[float], z: float) -> Law:
@@ -223,6 +232,7 @@ def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
     for name, member in members:
         if member.law is None:
             raise QuantityError("a reference", "members are written out", f"values.{name}")
+    _of_one_kind([member for _, member in members], "values")
     weights = table.get("weights", {})
     if isinstance(weights, list) and len(weights) == len(members):
         weights = dict(zip(values, weights, strict=True))
@@ -242,7 +252,11 @@ def _ensemble(table: dict[str, Any], canonical: Canonical) -> Quantity:
                 "weights",
             )
     total = float(sum(numbers))
-    return Quantity(table, members=members, weights=tuple(float(w) / total for w in numbers))
+    first = members[0][1]
+    return Quantity(
+        table, members=members, weights=tuple(float(w) / total for w in numbers), along_line=first.along_line,
+        dimension=first.dimension,
+    )  # fmt: skip
 
 
 def _difference(table: dict[str, Any], canonical: Canonical) -> Quantity:
@@ -254,7 +268,10 @@ def _difference(table: dict[str, Any], canonical: Canonical) -> Quantity:
         )
     if canonical.unit not in TABLES:
         raise QuantityError("difference of a compound unit", "only frequencies and energies are subtracted")
-    return Quantity(table, law=Exact(exact_difference(pair[0], pair[1], canonical.unit)))
+    value = exact_difference(pair[0], pair[1], canonical.unit)
+    if value != 0.0 and not LEAST <= abs(value) <= MOST:
+        raise QuantityError(f"a difference of {value:g}", "a number between 1e-300 and 1e300 is needed", "difference")
+    return Quantity(table, law=Exact(value), dimension=dimension_of(canonical.unit))
 
 
 def exact_difference(first: str, second: str, canonical: str) -> float:

@@ -50,6 +50,18 @@ class Places:
         """Everything that a reference may say."""
         return [*self.known, *(name.removeprefix("shared.") for name in self.known if name.startswith("shared."))]
 
+    def origin(self, address: str) -> str:
+        """The address whose quantity this one repeats word for word, as an inherited key of a resolved study does."""
+        way: set[str] = set()
+        while address in self.known and address not in way:
+            way.add(address)
+            quantity = self.known[address].quantity
+            target = None if quantity.times or quantity.scale else self.find(quantity.reference)
+            if target is None or target.address.partition(".")[2] != address.partition(".")[2]:
+                break
+            address = target.address
+        return address
+
     def along_line(self, quantity: Quantity, way: tuple[str, ...] = ()) -> bool:
         """Whether a quantity is in FWHM, here or where it refers to."""
         if not quantity.reference or quantity.reference in way:

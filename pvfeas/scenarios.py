@@ -259,7 +259,7 @@ def _rules(
             and isinstance(above.get("technique"), dict)
             and _kind_of(above["technique"]) == technique.kind
         )
-        if part.needs_width and not has and not inherits:
+        if part.needs_width and not has and not inherits and not isinstance(written, Leaf):
             reader.faults.add(
                 line.line,
                 f"{name}.line.fwhm",

@@ -201,6 +201,8 @@ def systematic_schema(optional: bool) -> Schema:
         {"if": {"properties": {"averages": {"const": how}}, "required": ["averages"]}, "then": {"required": [key]}}
         for how, key in needs.items()
     ]
+    growing = {"averages": {"const": "grows"}, "on": {"const": "scale"}}
+    rules.append({"not": {"properties": growing, "required": list(growing)}})
     relative = {"properties": {"on": {"enum": ["width", "frequency", "scale"]}}, "required": ["on"]}
     rules.append({"if": relative, "else": {"properties": {"size": size}}})
     return schema | {"allOf": rules}

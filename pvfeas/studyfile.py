@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import sys
 import tomllib
 from collections.abc import Mapping, Sequence
@@ -10,7 +11,7 @@ from typing import Any
 
 from pvfeas.errors import Fault, QuantityError, StudyError, UsageError
 from pvfeas.faults import Faults
-from pvfeas.inheritance import COMMAND_LINE, Leaf, Set, Tree, effective, own_tree, value_of_setting
+from pvfeas.inheritance import COMMAND_LINE, Leaf, Set, Tree, effective, leaf, own_tree, value_of_setting
 from pvfeas.keys import Key
 from pvfeas.positions import positions
 from pvfeas.quantity import parse
@@ -23,6 +24,7 @@ from pvfeas.vocabulary import SCENARIO, TOP, keys_for
 LARGEST = 1_000_000  # bytes
 MOST_SCENARIOS = 100
 DEEPEST = 50  # tables and lists inside each other
+TOO_LONG = ("a whole number of thousands of digits", "a number between 1e-300 and 1e300 is needed")
 Settings = Sequence[tuple[str, str]]
 
 
@@ -68,6 +70,10 @@ def load_text(text: str, file: str = "", settings: Settings = ()) -> Study:
         raise StudyError([_syntax(str(error), text, file)]) from None
     except RecursionError:
         raise StudyError([Fault(file, 0, "", "tables or lists nested too deeply", "a study is flat")]) from None
+    except ValueError:  # Python turns down whole numbers of more than a few thousand digits
+        long = re.search(r"\d[\d_]{1000,}", text)
+        line = text.count("\n", 0, long.start()) + 1 if long else 0
+        raise StudyError([Fault(file, line, "", *TOO_LONG)]) from None
     return _load(content, Faults(file, positions(text)), settings)
 
 
@@ -83,6 +89,15 @@ def depth(content: Any) -> int:
             for inner in (one.values() if isinstance(one, dict) else one)
         ]
     return deep
+
+
+def no_texts(content: Any) -> list[Any]:
+    """The keys that are no texts, at any depth."""
+    if isinstance(content, Mapping):
+        return [key for key in content if not isinstance(key, str)] + [
+            one for inner in content.values() for one in no_texts(inner)
+        ]
+    return [one for inner in content for one in no_texts(inner)] if isinstance(content, list) else []
 
 
 def _syntax(message: str, text: str, file: str) -> Fault:
@@ -106,6 +121,10 @@ def _syntax(message: str, text: str, file: str) -> Fault:
 
 def load_content(content: Mapping[str, Any], settings: Settings = ()) -> Study:
     """Read a study from nested dictionaries."""
+    if depth(content) > DEEPEST:
+        raise StudyError([Fault("", 0, "", "tables or lists nested too deeply", "a study is flat")])
+    if wrong := no_texts(content):
+        raise StudyError([Fault("", 0, "", f"the key {wrong[0]!r}", "keys are texts, as in a study file")])
     return _load(dict(content), Faults("", {}), settings)
 
 
@@ -152,12 +171,22 @@ def with_settings(content: dict[str, Any], settings: Settings, faults: Faults) -
         known = ["goal", "shared", "title", *(scenarios if isinstance(scenarios, dict) else {})]
         if (len(parts) < 2 and address != "title") or not parts or parts[0] not in known:
             hint = did_you_mean(parts[0] if parts else "", known) or f"an address begins with one of {', '.join(known)}"
+            if parts and parts[0] in known:
+                hint = f"say which key of it: {parts[0]}.KEY"
             faults.add(0, address, "is no address of this study", hint, COMMAND_LINE)
             continue
         try:
             value = value_of_setting(text)
+            if depth(value) > DEEPEST:
+                raise RecursionError
         except tomllib.TOMLDecodeError:
             faults.add(0, address, f"{_short(text)} is not TOML", "check the brackets and quotes", COMMAND_LINE)
+            continue
+        except RecursionError:
+            faults.add(0, address, "tables or lists nested too deeply", "a study is flat", COMMAND_LINE)
+            continue
+        except ValueError:
+            faults.add(0, address, *TOO_LONG, COMMAND_LINE)
             continue
         path = parts if parts[0] in ("goal", "shared", "title") else ["scenario", *parts]
         _place(made, path, value)
@@ -180,13 +209,12 @@ def _place(content: dict[str, Any], path: list[str], value: Any) -> None:
     if path[-1] == "splitting" and not isinstance(value, dict):
         of = old.get("of") if isinstance(old, dict) else None
         value = {"value": value, "status": "assumed", "source": "command line"} | ({"of": of} if of else {})
-    here[path[-1]] = Set(value)
+    plain = path == ["title"] or (len(path) == 3 and path[-1] in ("based_on", "without"))
+    here[path[-1]] = value if plain else Set(value)
 
 
 def _leaf(content: Any, path: tuple[str, ...], address: str, faults: Faults) -> Leaf:
-    if isinstance(content, Set):
-        return Leaf(content.value, address, 0, COMMAND_LINE)
-    return Leaf(content, address, faults.line_of(path), faults.file)
+    return leaf(content, address, faults.line_of(path), faults.file)
 
 
 def read_goal(content: Mapping[str, Any], reader: Reader) -> dict[str, Any]:

@@ -169,6 +169,7 @@ percent = 0.01
 
 WORD = r"(?:[A-Za-zµ_]{1,12}(?:\*\*\(?-?(?:[1-9]|0\.5)\)?)?|1)"
 GROUP = rf"(?:{WORD}|\({WORD}(?:[*/]{WORD}){{0,3}}\))"
+WAVENUMBER = re.compile(r"(?<![A-Za-zµ_])cm(?:(?:\*\*)?-1|⁻¹)(?!\d)|(?<![\w/*])1/cm(?![\w*])")
 PLAIN_COMPOUND = re.compile(rf"/?{GROUP}(?:[*/]{GROUP}){{0,5}}")
 
 
@@ -182,28 +183,32 @@ def _registry() -> Any:
     return registry
 
 
+def _plain(symbol: str) -> str:
+    """A compound unit in the notation of the registry; what stays apart by spaces alone stays so and is refused."""
+    text = re.sub(r"\s*([*/·()^])\s*", r"\1", "1" + symbol if symbol.startswith("/") else symbol)
+    text = text.replace("%", "percent").replace("·", "*").replace("sqrt(Hz)", "Hz**0.5").replace("^", "**")
+    return WAVENUMBER.sub("wavenumber", text)
+
+
 def compound(symbol: str, canonical: str = "") -> tuple[float, tuple[tuple[str, float], ...]]:
     """Factor and dimension of a compound unit such as kHz/Pa, through the registry."""
     import pint
 
-    text = (
-        ("1" + symbol if symbol.startswith("/") else symbol)
-        .replace("%", "percent")
-        .replace("·", "*")
-        .replace("sqrt(Hz)", "Hz**0.5")
-        .replace("^", "**")
-    )
-    text = text.replace("cm**-1", "wavenumber").replace("cm-1", "wavenumber").replace("1/cm", "wavenumber")
+    text = _plain(symbol)
     if "rad" in text:
         raise QuantityError(f"{symbol!r} has radians in it", "divide by 2 pi yourself and write Hz: nothing is assumed")
-    if not PLAIN_COMPOUND.fullmatch(text.replace(" ", "")):
-        raise QuantityError(f"{symbol[:60]!r} is no unit that is known here", wanted(canonical) if canonical else "")
+    right = wanted(canonical) if canonical else "a known unit is needed"
+    if not PLAIN_COMPOUND.fullmatch(text):
+        raise QuantityError(f"{symbol[:60]!r} is no unit that is known here", right)
     try:
         quantity = _registry().Quantity(1.0, text).to_base_units()
+        in_range = 1e-300 <= float(quantity.magnitude) <= 1e300
     except (pint.errors.PintError, ValueError):
-        raise QuantityError(
-            f"{symbol!r} is no unit that is known here", wanted(canonical) if canonical else "a known unit is needed"
-        ) from None
+        raise QuantityError(f"{symbol!r} is no unit that is known here", right) from None
+    except OverflowError:
+        in_range = False
+    if not in_range:
+        raise QuantityError(f"{symbol!r} is out of any range", right)
     dimension = tuple(sorted((str(name), float(power)) for name, power in quantity.dimensionality.items()))
     # base units of the registry are g, m, s: masses come out in g
     grams = sum(power for name, power in dimension if name == "[mass]")

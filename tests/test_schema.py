@@ -58,7 +58,7 @@ def test_starters_validate(kind: str) -> None:
 SEEN = (
     "misspelt_", "unknown_", "later_", "goal_", "scenario_", "splitting_plain", "splitting_without", "splitting_of",
     "technique_", "ramsey_free_time", "quoted_after", "systematic_averages_missing", "systematic_size_missing",
-    "per_reset", "as_one_over_t", "grows_", "title_is", "one_scenario", "quantity_is_true", "quantity_is_list",
+    "per_reset", "as_one_over_t", "grows_", "systematic_grows", "title_is", "one_scenario", "quantity_is_true", "quantity_is_list",
     "number_without_unit", "sides_", "trials_", "looks_", "free_", "based_on_is", "without_is", "power_above",
     "ee_above", "contrast_above", "day_of", "week_of", "one_point", "dof_below", "weights_neg", "ensemble_empty",
     "profile_unknown", "mode_unknown", "status_unknown", "correlation_without", "correlation_above", "fwhm_and_hwhm",
