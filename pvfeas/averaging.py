@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
 
 from pvfeas.laws import Array
+from pvfeas.reference import Passage, nothing, passage
 from pvfeas.schedule import live_per_wall, supply_live_time
 from pvfeas.systematics import after_of, averaged, group_freedom, resets_per_second, size_in_hertz, welch_satterthwaite
-from pvfeas.tables import Line, Samples, Schedule, Switching, Systematic
+from pvfeas.tables import Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques.base import Technique
 
 GOLDEN = (np.sqrt(5.0) - 1.0) / 2.0
@@ -43,7 +44,8 @@ def splitting_noise(technique_a: Technique, technique_b: Technique, line: Line, 
     noise_a, noise_b = arm_noise(technique_a, line), arm_noise(technique_b, line)
     if switching.mode == "simultaneous":
         return noise_a + noise_b
-    return np.asarray(noise_a / switching.live_fraction + noise_b / (1.0 - switching.live_fraction))
+    on_a = switching.on_a()
+    return np.asarray(noise_a / on_a + noise_b / (1.0 - on_a))
 
 
 def first_live_time(technique_a: Technique, technique_b: Technique, line: Line, switching: Switching) -> Array:
@@ -53,7 +55,8 @@ def first_live_time(technique_a: Technique, technique_b: Technique, line: Line, 
     cycle_a, cycle_b = technique_a.cycle_time(line), technique_b.cycle_time(line)
     if switching.mode == "simultaneous":
         return np.asarray(np.maximum(cycle_a, cycle_b))
-    return np.asarray(np.maximum(cycle_a / switching.live_fraction, cycle_b / (1.0 - switching.live_fraction)))
+    on_a = switching.on_a()
+    return np.asarray(np.maximum(cycle_a / on_a, cycle_b / (1.0 - on_a)))
 
 
 def part_name(systematic: Systematic) -> str:
@@ -66,7 +69,7 @@ class Averaging:
     """Variance of the splitting seen, Hz^2, against wall time, s. Arrays broadcast over draws.
 
     first, last: the wall times between which there is something to average (one whole cycle on
-    each arm; the sample's end, or infinity). statistical: variance × wall time, Hz^2 s.
+    each arm and one whole pattern; the sample's end, or infinity). statistical: variance × wall time, Hz^2 s.
     entries: systematics with their sizes in Hz; scale_entries: those that are fractions of the
     splitting. Everything stops at last.
     """
@@ -78,16 +81,30 @@ class Averaging:
     entries: tuple[Entry, ...]
     scale_entries: tuple[Entry, ...]
     schedule: Schedule
+    reference: Passage = field(default_factory=nothing)
 
     def usable(self, wall: Array) -> Array:
         """Whether both arms have been measured by then, before the sample ended."""
         return np.asarray(np.minimum(wall, self.last) >= self.first)
 
     def parts(self, wall: Array) -> dict[str, Array]:
-        """Variances by name: statistics, reference, systematics.NAME, "systematics.GROUP (group)" (added linearly)."""
+        """Variances by name: statistics, reference or reference.NAME, systematics.NAME or that of their group."""
         at = np.minimum(wall, self.last)
-        found = {"statistics": _over(self.statistical, at), "reference": np.zeros((1, 1))}
-        return found | self._groups(self.entries, at)
+        elapsed = at * self.elapsed_per_wall
+        noise = {f"reference.{one.name}": self.reference.variance(one, elapsed) for one in self.reference.shares}
+        found = {"statistics": _over(self.statistical, at) * self.reference.trend(elapsed)}
+        return found | (noise or {"reference": np.zeros((1, 1))}) | self._groups(self.entries, at)
+
+    @property
+    def elapsed_per_wall(self) -> Array:
+        """Time that the pattern runs, dead times included, over wall time."""
+        return np.asarray(self.live_per_wall / self.reference.live_share)
+
+    def noise_level(self, wall: Array) -> Array:
+        """Variance of statistics and reference noise × live time, Hz^2 s, at a wall time."""
+        at = np.maximum(np.minimum(wall, self.last), self.first)
+        found = [part for name, part in self.parts(at).items() if not name.startswith("systematics")]
+        return np.asarray(sum(found, np.zeros((1, 1))) * at * self.live_per_wall)
 
     def _left(self, entries: Sequence[Entry], at: Array) -> list[Array]:
         """What is left of each entry, in its own unit."""
@@ -106,6 +123,8 @@ class Averaging:
         at = np.minimum(wall, self.last)
         falling, constant, rising = self._coefficients
         total = _over(falling, at) + constant
+        if self.reference.shares or self.reference.detrend:
+            total = total + self._reference_extra(at)
         if rising is not None:
             with np.errstate(invalid="ignore"):
                 total = total + np.where(rising > 0, rising * at, 0.0)
@@ -114,6 +133,15 @@ class Averaging:
         if self._grouped:
             total = total + sum(self._groups(self._grouped, at).values(), np.zeros((1, 1)))
         return np.asarray(total)
+
+    def _reference_extra(self, at: Array) -> Array:
+        """What few patterns and a fitted trend add to the long-run coefficients."""
+        elapsed = at * self.elapsed_per_wall
+        falling = self.statistical
+        for one in self.reference.shares:
+            falling = falling + one.falling / self.elapsed_per_wall
+        found = _over(falling, at) * (self.reference.trend(elapsed) - 1.0)
+        return sum((self.reference.correction(one, elapsed) for one in self.reference.shares), found)
 
     def relative_variance(self, wall: Array) -> Array:
         """Variance of the systematics on the scale, relative to the splitting squared."""
@@ -139,6 +167,11 @@ class Averaging:
         for _, size in self._alone("never"):
             constant = constant + size**2
         rising = [size**2 * self.live_per_wall / after_of(systematic) for systematic, size in self._alone("grows")]
+        for one in self.reference.shares:
+            falling = falling + one.falling / self.elapsed_per_wall
+            constant = constant + one.constant
+            if np.any(one.rising):
+                rising.append(np.asarray(one.rising * self.elapsed_per_wall))
         return falling, constant, sum(rising, np.zeros((1, 1))) if rising else None
 
     @cached_property
@@ -148,7 +181,8 @@ class Averaging:
 
     @property
     def _grows(self) -> bool:
-        return any(systematic.averages == "grows" for systematic, _ in self.entries)
+        growing = any(systematic.averages == "grows" for systematic, _ in self.entries)
+        return growing or any(np.any(one.rising) for one in self.reference.shares)
 
     def best_time(self, wall: Array) -> Array:
         """The wall time up to `wall` at which the variance is least: a campaign may stop there.
@@ -245,21 +279,25 @@ def averaging_of(
     samples_b: Samples,
     schedule: Schedule,
     systematics: Sequence[Systematic],
+    references: Sequence[Reference] = (),
 ) -> Averaging:
     """Put a scenario's parts together."""
-    duty = live_per_wall(schedule)
+    reference = passage(references, switching, technique_a, technique_b, line)
+    running = live_per_wall(schedule)
+    duty = running * reference.live_share
     both = switching.mode == "simultaneous"
-    share_a = np.asarray(1.0 if both else switching.live_fraction)
-    share_b = np.asarray(1.0 if both else 1.0 - switching.live_fraction)
+    share_a = np.asarray(1.0 if both else switching.on_a())
+    share_b = np.asarray(1.0 if both else 1.0 - switching.on_a())
     lasts = np.minimum(supply_live_time(samples_a, share_a), supply_live_time(samples_b, share_b))
     width = technique_a.interrogation_width(line)
     sizes = [(one, size_in_hertz(one, width, line.frequency)) for one in systematics]
     return Averaging(
         live_per_wall=duty,
-        first=first_live_time(technique_a, technique_b, line, switching) / duty,
+        first=np.maximum(first_live_time(technique_a, technique_b, line, switching) / duty, reference.period / running),
         last=lasts / duty,
         statistical=splitting_noise(technique_a, technique_b, line, switching) / duty,
         entries=tuple(pair for pair in sizes if pair[0].on != "scale"),
         scale_entries=tuple(pair for pair in sizes if pair[0].on == "scale"),
         schedule=schedule,
+        reference=reference,
     )

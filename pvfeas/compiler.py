@@ -17,7 +17,7 @@ from pvfeas.references import Places, dimension_text, fits
 from pvfeas.study import Scenario, Study, Table, Written
 from pvfeas.suggestions import did_you_mean
 from pvfeas.systematics import dof_from_spread
-from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
+from pvfeas.tables import Goal, Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques import TECHNIQUES
 from pvfeas.units import wanted
 from pvfeas.vocabulary import HWHM, SPLITTING
@@ -240,6 +240,7 @@ class Compiler:
             technique_b=technique_b, switching=self.template(Switching, one.switching, one), samples_a=samples_a,
             samples_b=samples_b, schedule=self.template(Schedule, one.schedule, one),
             systematics=tuple(self.systematic(name, table, one) for name, table in one.systematics.items()),
+            references=tuple(self.reference(name, table, one) for name, table in one.reference.items()),
             floor_declared=bool(one.systematics), schedule_declared=one.schedule.written,
         )  # fmt: skip
 
@@ -266,6 +267,15 @@ class Compiler:
             if spread > 0.0:
                 numbers["dof"] = Expression(float(dof_from_spread(spread)))
         return Template(Systematic, numbers, made.options)
+
+    def reference(self, name: str, table: Table, one: Scenario) -> Template[Reference]:
+        """One kind of reference noise; the pairs of a table as numbers."""
+        made: Template[Reference] = self.template(Reference, table, one, {"name": name})
+        pairs = table.options.get("table")
+        if pairs is None:
+            return made
+        numbers = tuple((exact(tau, "s"), exact(deviation, "Hz")) for tau, deviation in pairs)
+        return Template(Reference, made.quantities, {**made.options, "table": numbers})
 
     # inputs
 
@@ -342,3 +352,10 @@ class Compiler:
         address = self.places.origin(address)
         if (code, address, message) not in self.warnings:
             self.warnings.append((code, address, message))
+
+
+def exact(text: str, unit: str) -> float:
+    """An exact quantity that was checked when it was read."""
+    law = parse(text, unit).law
+    assert isinstance(law, Exact)
+    return law.value

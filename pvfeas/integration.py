@@ -34,7 +34,7 @@ def others_of(scenario: ScenarioProblem) -> set[str]:
     """Every input that acts on something else than the splitting's plain factors."""
     templates: tuple[Template[Any], ...] = (
         scenario.line, scenario.technique_a, scenario.technique_b, scenario.switching, scenario.samples_a,
-        scenario.samples_b, scenario.schedule, *scenario.systematics,
+        scenario.samples_b, scenario.schedule, *scenario.systematics, *scenario.references,
     )  # fmt: skip
     found = {address for template in templates for address in template.addresses()}
     for base, exponent in scenario.splitting.powers:

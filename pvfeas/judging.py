@@ -84,7 +84,11 @@ def _limited(one: ScenarioProblem, limits: dict[Expression, tuple[float, float]]
         replace(t, quantities={k: replace(e, limits=limits[e]) if e in limits else e for k, e in t.quantities.items()})
         for t in one.systematics
     )
-    return replace(one, systematics=entries, **made)
+    references = tuple(
+        replace(t, quantities={k: replace(e, limits=limits[e]) if e in limits else e for k, e in t.quantities.items()})
+        for t in one.references
+    )
+    return replace(one, systematics=entries, references=references, **made)
 
 
 def systematics_fit(study: Study, one: ScenarioProblem, written: Scenario, faults: Faults) -> None:

@@ -12,7 +12,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any, Literal
 
-Sort = Literal["quantity", "choice", "choices", "flag", "integer", "text"]
+Sort = Literal["quantity", "choice", "choices", "flag", "integer", "text", "pairs"]
 
 
 @dataclass(frozen=True)
@@ -103,6 +103,11 @@ def integer(
 def text(meaning: str, default: str | None = None, required: bool = False) -> Any:
     """Declare free text."""
     return field(default=default, metadata={"key": Key("text", meaning, default=default, required=required)})
+
+
+def pairs(meaning: str, first: str, second: str) -> Any:
+    """Declare a list of pairs of exact quantities in these units; numbers once they are read."""
+    return field(default=None, metadata={"key": Key("pairs", meaning, unit=f"{first}, {second}")})
 
 
 def keys_of(part: type) -> Mapping[str, Key]:

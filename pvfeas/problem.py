@@ -14,7 +14,7 @@ from typing import Any, Generic, TypeVar
 import numpy as np
 
 from pvfeas.laws import Array, Law
-from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
+from pvfeas.tables import Goal, Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques.base import Technique
 
 T = TypeVar("T")
@@ -117,6 +117,7 @@ class ScenarioProblem:
     samples_b: Template[Samples]
     schedule: Template[Schedule]
     systematics: tuple[Template[Systematic], ...]
+    references: tuple[Template[Reference], ...]
     floor_declared: bool
     schedule_declared: bool
 

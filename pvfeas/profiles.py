@@ -77,3 +77,8 @@ PROFILES: dict[str, Profile] = {
     "lorentzian": Profile("lorentzian", lorentzian, lorentzian_slope, lorentzian_slope_from, lorentzian_partner),
     "gaussian": Profile("gaussian", gaussian, gaussian_slope, gaussian_slope_from, gaussian_partner),
 }
+
+
+def slope(profile: str, x: Array) -> Array:
+    """dg/dx of a profile by name."""
+    return np.asarray(PROFILES[profile].slope(x))

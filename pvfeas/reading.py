@@ -9,6 +9,7 @@ from pvfeas.errors import QuantityError
 from pvfeas.faults import Faults
 from pvfeas.inheritance import COMMAND_LINE, Leaf, Node
 from pvfeas.keys import Key
+from pvfeas.laws import Exact
 from pvfeas.quantity import Quantity, parse
 from pvfeas.study import Table, Written
 from pvfeas.suggestions import did_you_mean, suggest
@@ -17,7 +18,7 @@ from pvfeas.vocabulary import LATER, LATER_CHOICES, LATER_KINDS, keys_for, later
 
 SORTS = {
     "choice": "a text in quotes", "choices": "a list of texts", "flag": "true or false",
-    "integer": "a whole number", "text": "a text in quotes",
+    "integer": "a whole number", "text": "a text in quotes", "pairs": "a list of pairs",
 }  # fmt: skip
 OF_A_QUANTITY = ("source", "status", "note", "demonstrated")
 
@@ -119,6 +120,8 @@ class Reader:
             return value if isinstance(value, str) else self.complain(leaf, _short(value), "a text in quotes is needed")
         if key.sort == "choices":
             return self.words(leaf, value, key)
+        if key.sort == "pairs":
+            return self.pairs(leaf, value, key)
         return self.word(leaf, value, key)
 
     def words(self, leaf: Leaf, value: Any, key: Key) -> Any:
@@ -129,6 +132,22 @@ class Reader:
             if one not in key.choices:
                 return self.complain(leaf, f"{one!r}", _choice_hint(one, key.choices))
         return tuple(one for one in key.choices if one in value)
+
+    def pairs(self, leaf: Leaf, value: Any, key: Key) -> Any:
+        """A list of pairs of exact quantities, as they were written."""
+        units = key.unit.split(", ")
+        good = isinstance(value, list) and value and all(isinstance(one, list) and len(one) == 2 for one in value)
+        if not good:
+            return self.complain(leaf, _short(value), 'a list of pairs is needed: [["1 s", "3 Hz"], ["10 s", "1 Hz"]]')
+        for one in value:
+            for text, unit in zip(one, units, strict=True):
+                try:
+                    law = parse(text, unit).law
+                except QuantityError as error:
+                    return self.complain(leaf, error.found, error.wanted)
+                if not isinstance(law, Exact) or law.value <= 0:
+                    return self.complain(leaf, _short(text), "exact positive values are needed in a table")
+        return tuple((str(one[0]), str(one[1])) for one in value)
 
     def word(self, leaf: Leaf, value: Any, key: Key) -> Any:
         """One word out of the allowed ones."""

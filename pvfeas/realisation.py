@@ -42,6 +42,7 @@ def realise(scenario: ScenarioProblem, draws: Draws, signal: Array | None = None
     switching, schedule = scenario.switching.at(draws), scenario.schedule.at(draws)
     samples_a, samples_b = scenario.samples_a.at(draws), scenario.samples_b.at(draws)
     systematics = tuple(template.at(draws) for template in scenario.systematics)
+    references = tuple(template.at(draws) for template in scenario.references)
     factor = purity(samples_a.ee_a, samples_b.ee_b)
     with np.errstate(divide="ignore", invalid="ignore"):
         known_to = np.where(samples_a.ee_known_to == 0, 0.0, samples_a.ee_known_to / np.abs(factor))
@@ -50,7 +51,9 @@ def realise(scenario: ScenarioProblem, draws: Draws, signal: Array | None = None
         technique_a=technique_a,
         technique_b=technique_b,
         samples_a=samples_a,
-        averaging=averaging_of(technique_a, technique_b, line, switching, samples_a, samples_b, schedule, systematics),
+        averaging=averaging_of(
+            technique_a, technique_b, line, switching, samples_a, samples_b, schedule, systematics, references
+        ),
         factor=factor,
         noise=splitting_noise(technique_a, technique_b, line, switching),
         known_to=np.asarray(known_to),

@@ -30,6 +30,8 @@ def tables_of(study: Study, name: str) -> Iterator[tuple[str, Table]]:
         yield f"{name}.{part}", getattr(scenario, part)
     for entry, table in scenario.systematics.items():
         yield f"{name}.systematics.{entry}", table
+    for entry, table in scenario.reference.items():
+        yield f"{name}.reference.{entry}", table
     if scenario.technique_b is not None:
         yield f"{name}.arm_b.technique", scenario.technique_b
     if scenario.samples_b is not None:

@@ -61,10 +61,11 @@ def scenario_lines(scenario: Scenario) -> list[str]:
     for part in ("line", "technique", "switching", "samples", "schedule"):
         table: Table = getattr(scenario, part)
         lines.append(f"{part} = {_table(table, part, f'{name}.{part}')}")
-    if scenario.systematics:
-        lines += ["", f"[scenario.{word(name)}.systematics]"]
-        for entry, table in scenario.systematics.items():
-            lines.append(f"{word(entry)} = {_table(table, 'systematics', f'{name}.systematics.{entry}')}")
+    for part, entries in (("reference", scenario.reference), ("systematics", scenario.systematics)):
+        if entries:
+            lines += ["", f"[scenario.{word(name)}.{part}]"]
+        for entry, table in entries.items():
+            lines.append(f"{word(entry)} = {_table(table, part, f'{name}.{part}.{entry}')}")
     if scenario.technique_b is not None or scenario.samples_b is not None:
         lines += ["", f"[scenario.{word(name)}.arm_b]"]
         if scenario.technique_b is not None:
@@ -93,10 +94,14 @@ def _table(table: Table, part: str, address: str) -> str:
             content[name] = _reference(table.quantities[name], f"{address}.{name}")
         elif name in table.options:
             value = table.options[name]
-            content[name] = list(value) if isinstance(value, tuple) else value
+            content[name] = _listed(value)
         elif key.default is not None and key.sort != "quantity":
             content[name] = list(key.default) if isinstance(key.default, tuple) else key.default
     return toml(content)
+
+
+def _listed(value: Any) -> Any:
+    return [_listed(one) for one in value] if isinstance(value, tuple | list) else value
 
 
 def _reference(written: Written, own: str) -> Any:

@@ -6,11 +6,13 @@ import re
 from typing import Any
 
 from pvfeas.inheritance import Leaf, Node, Tree, merge
+from pvfeas.keys import keys_of
 from pvfeas.reading import Reader, _short
 from pvfeas.study import Scenario, Table, Written
 from pvfeas.suggestions import did_you_mean, suggest
+from pvfeas.tables import Reference, Switching
 from pvfeas.techniques import TECHNIQUES
-from pvfeas.vocabulary import ALTERNATIVES, LATER, PARTS, SCENARIO, SPLITTING
+from pvfeas.vocabulary import ALTERNATIVES, PARTS, SCENARIO, SPLITTING
 
 NAME = re.compile(r"[\w-]+")
 OF = ("difference", "one enantiomer")
@@ -21,7 +23,6 @@ def read_scenario(tree: Tree, parent: Tree | None, own: Tree, reader: Reader) ->
     """The typed scenario, or None where what is wrong (said) leaves nothing to work with."""
     nodes, name = tree.nodes, tree.name
     above: Node | None = parent.nodes if parent else None
-    _refuse_reference(nodes, name, tree, reader)
     splitting = read_splitting(tree, above, reader)
     missing_technique = "technique" not in nodes
     technique = _technique(nodes.get("technique"), f"{name}.technique", own.lines["technique"], above, reader, name)
@@ -33,29 +34,26 @@ def read_scenario(tree: Tree, parent: Tree | None, own: Tree, reader: Reader) ->
         )
         for part in PARTS
     }
-    systematics = _systematics(nodes.get("systematics"), tree, own, above, reader)
+    systematics = _entries("systematics", tree, own, above, reader)
+    reference = _entries("reference", tree, own, above, reader)
+    switching = nodes.get("switching")
+    if above is None or switching is not above.get("switching"):
+        _own_rules(Switching, tables["switching"], switching, f"{name}.switching", own.lines["switching"], reader)
     technique_b, samples_b = _arm_b(nodes, tree, own, reader)
     _rules(tree, technique, tables, technique_b, above, reader)
+    if reference and technique is not None:
+        _reference_rules(tree, own, technique, tables["switching"], reference, reader)
     if splitting is None or technique is None:
         return None
     return Scenario(
         name=name, line_number=tree.line, based_on=tree.parent, splitting=splitting[0], splitting_of=splitting[1],
-        technique=technique, systematics=systematics, technique_b=technique_b, samples_b=samples_b, **tables,
+        technique=technique, systematics=systematics, reference=reference, technique_b=technique_b,
+        samples_b=samples_b, **tables,
     )  # fmt: skip
 
 
 def _near_miss(nodes: Node, wanted: str) -> bool:
     return any(suggest(key, SCENARIO) == wanted for key in nodes if key not in SCENARIO)
-
-
-def _refuse_reference(nodes: Node, name: str, tree: Tree, reader: Reader) -> None:
-    if "reference" in nodes:
-        reader.faults.add(
-            tree.lines["reference"],
-            f"{name}.reference",
-            f"the table 'reference' {LATER}",
-            "drop it for now: no reference noise",
-        )
 
 
 def read_splitting(tree: Tree, above: Node | None, reader: Reader) -> tuple[Written, str] | None:
@@ -129,34 +127,80 @@ def _kind_of(node: Node) -> str:
     return leaf.value if isinstance(leaf, Leaf) and isinstance(leaf.value, str) else ""
 
 
-def _systematics(node: Any, tree: Tree, own: Tree, above: Node | None, reader: Reader) -> dict[str, Table]:
+EXAMPLES = {
+    "systematics": 'size = "0.1 Hz", averages = "never"',
+    "reference": 'kind = "white", allan = "3 Hz"',
+}
+
+
+def _entries(part: str, tree: Tree, own: Tree, above: Node | None, reader: Reader) -> dict[str, Table]:
+    """The named entries of the systematics or of the reference."""
+    node = tree.nodes.get(part)
     if node is None:
         return {}
     if isinstance(node, Leaf):
-        reader.complain(
-            node,
-            f"{_short(node.value)} where a table belongs",
-            'write [scenario.NAME.systematics] with entries name = { size = "…", … }',
-        )
+        found = f"{_short(node.value)} where a table belongs"
+        reader.complain(node, found, f"write [scenario.NAME.{part}] with entries name = {{ {EXAMPLES[part]} }}")
         return {}
-    upper = above.get("systematics") if above else None
-    found = {}
+    upper = above.get(part) if above else None
+    made = {}
     for name, entry in node.items():
-        address = f"{tree.name}.systematics.{name}"
-        line = _line_of(entry, own.lines["systematics"])
+        address = f"{tree.name}.{part}.{name}"
+        line = _line_of(entry, own.lines[part])
         if isinstance(entry, Leaf):
-            reader.complain(
-                entry, f"{_short(entry.value)} where a table belongs", 'write { size = "0.1 Hz", averages = "never" }'
-            )
+            reader.complain(entry, f"{_short(entry.value)} where a table belongs", f"write {{ {EXAMPLES[part]} }}")
             continue
         if not NAME.fullmatch(name):
             reader.faults.add(line, address, f"{_short(name)} cannot name an entry", "use letters, digits, _ and -")
             continue
         parent = upper.get(name) if isinstance(upper, dict) else None
-        found[name] = reader.table(entry, "systematics", _size_of(entry), tree.name, address, line, parent)
-        if parent is None or entry is not parent:
-            _averages(found[name], entry, address, line, parent, reader)
-    return found
+        kind = _size_of(entry) if part == "systematics" else ""
+        made[name] = reader.table(entry, part, kind, tree.name, address, line, parent)
+        if parent is not None and entry is parent:
+            continue
+        if part == "systematics":
+            _averages(made[name], entry, address, line, parent, reader)
+        else:
+            _own_rules(Reference, made[name], entry, address, line, reader)
+    return made
+
+
+def _own_rules(
+    part: type[Switching] | type[Reference], table: Table, node: Any, address: str, line: int, reader: Reader
+) -> None:
+    """What is wrong with the keys of one table taken together."""
+    if not isinstance(node, dict):
+        return
+    known = keys_of(part)
+    absorbed = {suggest(one, known) for one in node if one not in known}
+    for key, found, right in part.rules(dict.fromkeys([*node, *absorbed], True) | dict(table.options)):
+        if key not in absorbed:
+            leaf = node.get(key)
+            at, file = (leaf.line, leaf.file) if isinstance(leaf, Leaf) else (line, None)
+            reader.faults.add(at, f"{address}.{key}", found, right, file)
+
+
+def _reference_rules(
+    tree: Tree, own: Tree, technique: Table, switching: Table, reference: dict[str, Table], reader: Reader
+) -> None:
+    """What reference noise needs of the rest of a scenario."""
+    line, address = own.lines["reference"], f"{tree.name}.reference"
+    written = tree.nodes.get("switching")
+    given = set(written) if isinstance(written, dict) else set()
+    if technique.kind == "quoted":
+        right = "a quoted uncertainty holds everything: drop the reference"
+        reader.faults.add(line, address, "reference noise for a quoted uncertainty", right)
+    elif switching.options.get("mode") == "simultaneous":
+        if "rejection" not in given:
+            right = "say how well common noise cancels: write rejection = 30 in switching"
+            reader.faults.add(line, address, "reference noise without rejection", right)
+        for name, table in reference.items():
+            if table.options.get("kind") == "drift":
+                right = "it is common to both: give what is left of it as a systematic"
+                reader.faults.add(table.line, f"{address}.{name}", "a drift with both enantiomers at once", right)
+    elif "pattern" not in given and not any(suggest(one, ("pattern",)) for one in given):
+        right = 'how it averages depends on the order: write switching = { pattern = "ABBA", dwell = "20 s" }'
+        reader.faults.add(line, address, "reference noise without a switching pattern", right)
 
 
 def _size_of(entry: Node) -> str:

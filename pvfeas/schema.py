@@ -82,6 +82,9 @@ def key_schema(key: Key) -> Schema:
         return schema | {"enum": list(key.choices)}
     if key.sort == "choices":
         return schema | {"type": "array", "items": {"enum": list(key.choices)}, "uniqueItems": True}
+    if key.sort == "pairs":
+        pair = {"type": "array", "items": {"type": "string"}, "minItems": 2, "maxItems": 2}
+        return schema | {"type": "array", "items": pair, "minItems": 1}
     return schema | {"type": "boolean" if key.sort == "flag" else "string"}
 
 
@@ -228,6 +231,12 @@ def scenario_schema(optional: bool) -> Schema:
             "propertyNames": {"pattern": NAME},
             "additionalProperties": {"$ref": f"#/$defs/systematic{view}"},
             "description": "named uncertainties that stand in the final budget",
+        },
+        "reference": {
+            "type": "object",
+            "propertyNames": {"pattern": NAME},
+            "additionalProperties": declared("reference", optional=optional),
+            "description": "frequency noise of the probe, by name",
         },
         "arm_b": table_schema(
             {"technique": {"$ref": "#/$defs/techniqueOptional"}, "samples": declared("samples", optional=True)}

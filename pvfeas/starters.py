@@ -77,7 +77,7 @@ def starter(technique: str) -> str:
             kind=technique,
             values=VALUES.get(technique),
         ),
-        _table(f"scenario.{SCENARIO}.switching", keys_for("switching")),
+        *_switching(technique),
         _table(f"scenario.{SCENARIO}.samples", keys_for("samples"), values={"ee_a": "@ee", "ee_b": "@ee"}),
         _table(
             f"scenario.{SCENARIO}.schedule", keys_for("schedule"),
@@ -87,6 +87,26 @@ def starter(technique: str) -> str:
         CHILD.format(scenario=SCENARIO, change=CHANGES.get(technique, "")).rstrip(),
     ]  # fmt: skip
     return "\n\n".join(blocks) + "\n"
+
+
+def _switching(technique: str) -> list[str]:
+    """The order of the enantiomers and the noise of the reference; a quoted uncertainty holds both."""
+    place, keys = f"scenario.{SCENARIO}", keys_for("switching")
+    if technique == "quoted":
+        return [_table(f"{place}.switching", keys, hidden=("dwell", "live_fraction", "rejection"))]
+    own = {name: key for name, key in keys_for("reference").items() if name != "name"}
+    noise = {name: own[name] for name in ("kind", "allan")}
+    return [
+        _table(
+            f"{place}.switching",
+            keys,
+            hidden=("live_fraction", "rejection"),
+            values={"pattern": "ABBA", "dwell": "20 s", "dead_time": "1 s"},
+        ),
+        "# Frequency noise of the probe, each kind by itself. None declared: none is assumed.\n"
+        + _table(f"{place}.reference.laser", own, shown=("kind", "allan", "at"), values={"at": "1 s"}),
+        _table(f"{place}.reference.cavity", noise, values={"kind": "flicker", "allan": "0.4 Hz"}),
+    ]
 
 
 def _systematics() -> str:
@@ -125,6 +145,8 @@ def _table(
 
 def _written(key: Key, value: str | None) -> str:
     """The value that is shown for a key, as TOML."""
+    if key.sort == "pairs":
+        return '[["1 s", "3 Hz"], ["10 s", "1 Hz"]]'
     if key.sort == "choices":
         return (
             "[" + ", ".join(f'"{one}"' for one in key.default or ()) + "]" if isinstance(key.default, tuple) else "[]"
@@ -145,7 +167,7 @@ def _anything(key: Key) -> str:
     if key.sort == "quantity":
         number = "10" if key.upper > 10 else f"{(key.lower + key.upper) / 2:g}"
         return number if key.unit == "1" else f"{number} {key.unit}"
-    return "10" if key.sort == "integer" else "…"
+    return "ABBA" if "order" in key.meaning else "10" if key.sort == "integer" else "…"
 
 
 def _is_number(text: str) -> bool:

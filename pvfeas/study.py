@@ -48,6 +48,7 @@ class Scenario(_Frozen):
     samples: Table
     schedule: Table
     systematics: Mapping[str, Table]
+    reference: Mapping[str, Table] = Field(default_factory=dict)
     technique_b: Table | None = None  # where arm_b overrides anything
     samples_b: Table | None = None
 

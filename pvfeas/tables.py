@@ -6,11 +6,15 @@ Hz, s, kg, m, K, Pa that broadcast over draws. None: not given.
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
-from pvfeas.keys import choice, fraction, integer, positive, quantity, text
+import numpy as np
+
+from pvfeas.keys import choice, flag, fraction, integer, pairs, positive, quantity, text
 from pvfeas.laws import Array
+from pvfeas.patterns import default_live_fraction, faults_of
 
 
 @dataclass(frozen=True)
@@ -20,6 +24,7 @@ class Line:
     frequency: Array | None = positive("Hz", "frequency of the line", example="29.1 THz")
     profile: str = choice("shape of the line", "lorentzian", "gaussian", default="lorentzian")
     fwhm: Array | None = positive("Hz", "full width at half maximum", example="12(2) kHz")
+    photons: int = integer("photons of the transition: laser noise counts that often", lower=1, upper=20, default=1)
 
 
 @dataclass(frozen=True)
@@ -29,9 +34,86 @@ class Switching:
     mode: str = choice(
         "one enantiomer at a time, or both at once", "alternating", "simultaneous", default="alternating"
     )
-    live_fraction: Array = fraction(
-        "share of the live time on enantiomer a", lower_open=True, upper_open=True, default="0.5"
+    live_fraction: Array | None = fraction(
+        "share of the live time on enantiomer a; equal dwells, or one half without a pattern, if absent",
+        lower_open=True, upper_open=True, example="0.5",
+    )  # fmt: skip
+    pattern: str | None = text("order of the enantiomers, repeated, as in ABBA; other letters: time without signal")
+    dwell: Array | None = positive("s", "live time between two places of the pattern", example="20 s")
+    dead_time: Array = quantity("s", "time lost at each change of letter", lower=0.0, default="0 s")
+    rejection: Array | None = quantity(
+        "1",
+        "factor by which the amplitude of the reference's noise is rejected (simultaneous)",
+        lower=1.0,
+        example="30",
     )
+    detrend: bool = flag("whether a linear drift is fitted and removed")
+
+    @classmethod
+    def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
+        """A pattern has a dwell and alternates; rejection belongs to arms at the same time."""
+        if given.get("mode") == "simultaneous":
+            for key in ("pattern", "dwell", "dead_time", "detrend", "live_fraction"):
+                if key in given and given[key] is not False:
+                    yield key, f"{key} with both enantiomers at once", 'it belongs to mode = "alternating": drop it'
+            return
+        if "rejection" in given:
+            yield "rejection", "rejection with alternating enantiomers", 'it belongs to mode = "simultaneous": drop it'
+        if "pattern" in given:
+            wrong = faults_of(given["pattern"]) if isinstance(given["pattern"], str) else ""
+            if wrong:
+                yield "pattern", f'the pattern "{given["pattern"][:30]}"', wrong
+            if "dwell" not in given:
+                yield "dwell", "is missing", 'a pattern needs it: write dwell = "20 s"'
+            return
+        for key in ("dwell", "dead_time", "detrend"):
+            if key in given and given[key] is not False:
+                yield key, f"{key} without a pattern", 'write pattern = "ABBA" too, or drop it'
+
+    def on_a(self) -> Array:
+        """Share of the live time on enantiomer a."""
+        if self.live_fraction is not None:
+            return self.live_fraction
+        return np.asarray(0.5 if self.pattern is None else default_live_fraction(self.pattern))
+
+
+@dataclass(frozen=True)
+class Reference:
+    """One kind of frequency noise of the probe, or its drift."""
+
+    name: str = ""
+    kind: str = choice(
+        "colour of the noise, or drift", "white", "flicker", "random-walk", "drift", "table",
+        required=True, example="white",
+    )  # fmt: skip
+    allan: Array | None = positive("Hz", "Allan deviation at the averaging time at", example="3 Hz")
+    at: Array = positive("s", "averaging time that allan belongs to", default="1 s")
+    h: Array | None = positive(
+        "1", "one-sided coefficient of the power spectral density in Hz^2/Hz at 1 Hz", example="9"
+    )
+    rate: Array | None = quantity("Hz/s", "drift in frequency per time", example="0.1 Hz/s")
+    table: tuple[tuple[float, float], ...] | None = pairs("averaging times and Allan deviations", "s", "Hz")
+    of: str = choice("whose frequency it is", "laser", "molecule", default="laser")
+
+    @classmethod
+    def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
+        """A drift has a rate, a table its pairs, noise exactly one of allan and h."""
+        kind = given.get("kind")
+        if not isinstance(kind, str):
+            return
+        own = {"drift": ("rate",), "table": ("table",)}.get(kind, ("allan", "h"))
+        for key in ("allan", "h", "rate", "table"):
+            if key in given and key not in own:
+                yield key, f"{key} for a reference of kind {kind!r}", f"{' or '.join(own)} says its size: drop it"
+        if not any(key in given for key in own):
+            example = {"drift": 'rate = "0.1 Hz/s"', "table": 'table = [["1 s", "3 Hz"], …]'}.get(
+                kind, 'allan = "3 Hz"'
+            )
+            yield own[0], "is missing", f"a reference of kind {kind!r} needs it: write {example}"
+        if {"allan", "h"} <= set(given) and own == ("allan", "h"):
+            yield "h", "both allan and h", "give one of them"
+        if "at" in given and "allan" not in given:
+            yield "at", "at without allan", "it belongs to allan: drop it"
 
 
 @dataclass(frozen=True)

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from pvfeas.keys import Key, keys_of
-from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
+from pvfeas.tables import Goal, Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques import TECHNIQUES
 
 PARTS: dict[str, type] = {"line": Line, "switching": Switching, "samples": Samples, "schedule": Schedule}
@@ -21,10 +21,9 @@ SPLITTING = Key("quantity", "predicted splitting nu(a) - nu(b), signed", "Hz", r
 
 LATER = "is planned for a later version of pvfeas"
 LATER_KEYS: dict[str, tuple[str, ...]] = {
-    "switching": ("pattern", "dwell", "dead_time", "rejection", "detrend"),
     "line": (
         "natural", "pressure", "pressure_coefficient", "saturation", "laser", "beam_radius", "speed", "temperature",
-        "mass", "photons", "lorentzian", "gaussian",
+        "mass", "lorentzian", "gaussian",
     ),
     "scan": ("modulation",),
 }  # fmt: skip
@@ -41,6 +40,8 @@ def keys_for(table: str, kind: str = "") -> Mapping[str, Key]:
         if kind not in ("", "hertz", "signal"):
             keys["size"] = replace(keys["size"], unit="1", example="1e-3 ×/ 1.5")
         return keys
+    if table == "reference":
+        return keys_of(Reference)
     if table == "goal":
         return keys_of(Goal)
     keys = dict(keys_of(PARTS[table]))

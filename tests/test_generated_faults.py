@@ -12,7 +12,7 @@ from pvfeas import StudyError, problem_of
 from pvfeas.errors import Fault
 from pvfeas.keys import Key, keys_of
 from pvfeas.study import Study
-from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
+from pvfeas.tables import Goal, Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques import TECHNIQUES
 
 Tables = dict[str, dict[str, Any]]
@@ -29,19 +29,29 @@ MEASURE = {"kind": "measure", "relative_uncertainty": 0.2, "power": 0.9, "within
 NEEDS_GOAL = {"limit": EXCLUDE, "construction": EXCLUDE, "relative_uncertainty": MEASURE}
 NEEDS_AVERAGES = {"every": {"averages": "per reset", "every": "1 d"}, "after": {"averages": "as 1/t", "after": "1 d"}}
 
+PATTERN = {"pattern": "ABBA", "dwell": "20 s"}
+BOTH = {"mode": "simultaneous", "rejection": 30}
+REFERENCE = {
+    "h": {"kind": "white", "h": 9}, "rate": {"kind": "drift", "rate": "0.1 Hz/s"},
+    "table": {"kind": "table", "table": [["1 s", "3 Hz"], ["10 s", "1 Hz"]]},
+}  # fmt: skip
+
 
 def good(table: str, kind: str, key: str) -> Tables:
     """A study that is right and in which the key makes sense."""
     technique = TECHNIQUE[kind]
     if kind == "scan" and key in ("counts", "background"):
         technique = SHOT
-    if key == "rate":
+    if key == "rate" and table == "technique":
         technique = {name: value for name, value in technique.items() if name != "molecules"} | {"rate": "80 1/s"}
     line = {"frequency": "29.1 THz", "fwhm": "12(2) kHz"}
     if key == "hwhm":
         line = {"frequency": "29.1 THz", "hwhm": "6(1) kHz"}
     floor = {"size": "0.1 Hz ×/ 1.5", "averages": "never"}
-    return {
+    more: Tables = {"switching": dict(BOTH if key == "rejection" else PATTERN)} if table == "switching" else {}
+    if table == "reference.laser":
+        more = {"switching": dict(PATTERN), table: dict(REFERENCE.get(key, {"kind": "white", "allan": "3 Hz"}))}
+    return more | {
         "goal": dict(NEEDS_GOAL.get(key, DETECT) if table == "goal" else DETECT),
         "line": line,
         "technique": dict(technique),
@@ -113,6 +123,11 @@ def wrong(key: Key) -> Iterator[tuple[str, Any]]:
         yield "fraction for a whole number", 1.5
     elif key.sort == "flag":
         yield "text for a flag", "yes"
+    elif key.sort == "pairs":
+        yield "text for a list", "about three"
+        yield "triples", [["1 s", "3 Hz", "4 Hz"]]
+        yield "wrong dimension", [["1 s", "3 kg"]]
+        yield "not exact", [["1 s", "3(1) Hz"]]
     else:
         yield "number for a text", 5
     if key.sort in ("quantity", "integer"):
@@ -122,7 +137,7 @@ def wrong(key: Key) -> Iterator[tuple[str, Any]]:
 
 def fields() -> Iterator[tuple[str, str, str, Key]]:
     """(table, technique, key, declaration) of everything that a study may hold."""
-    for table, part in {"goal": Goal, **PARTS, "systematics.floor": Systematic}.items():
+    for table, part in {"goal": Goal, **PARTS, "systematics.floor": Systematic, "reference.laser": Reference}.items():
         for name, key in keys_of(part).items():
             yield table, "scan", name, key
     yield "line", "scan", "hwhm", keys_of(Line)["fwhm"]

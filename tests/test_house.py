@@ -17,9 +17,9 @@ FILES = sorted(PACKAGE.rglob("*.py"))
 NUMBER_HALF = (
     ("errors", "constants", "keys", "options", "generating_vector", "showing", "suggestions"),
     ("laws", "results"),
-    ("tables", "profiles", "thresholds"),
+    ("frequency_noise", "patterns", "switching_noise", "tables", "profiles", "thresholds"),
     ("techniques", "centre_bounds", "limits", "systematics", "schedule"),
-    ("problem", "averaging", "decision"),
+    ("problem", "reference", "averaging", "decision"),
     ("points", "conditional", "quantiles", "nominal", "roots", "summaries"),
     ("realisation", "estimator", "linear", "monte_carlo", "required", "integration"),
     ("questions",),

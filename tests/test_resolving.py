@@ -27,7 +27,8 @@ def parts(problem: Problem) -> list[list[Any]]:
     """Every part of every scenario with its defaults filled in, expressions standing for numbers."""
     found = []
     for one in problem.scenarios:
-        values = [*(value for name, value in vars(one).items() if name != "systematics"), *one.systematics]
+        plain = (value for name, value in vars(one).items() if name not in ("systematics", "references"))
+        values = [*plain, *one.systematics, *one.references]
         found.append([v.part(**v.quantities, **v.options) if isinstance(v, Template) else v for v in values])
     return found
 

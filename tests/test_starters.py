@@ -48,8 +48,10 @@ def switched_on(text: str, number: int) -> str:
 # Taking these keys into use asks for another change too, which the message must say.
 ELSEWHERE = {
     "limit": "exclude", "relative_uncertainty": "measure", "hwhm": "fwhm",
-    "rate": "molecules", "counts": "shot", "background": "shot", "every": "per reset", "after": "as 1/t",
+    "rate": "molecules|white", "counts": "shot", "background": "shot", "every": "per reset", "after": "as 1/t",
+    "rejection": "simultaneous", "h": "allan", "table": "white",
 }  # fmt: skip
+PATTERN = ("pattern", "dwell", "dead_time")  # go together
 
 
 @pytest.mark.parametrize("kind", KINDS)
@@ -62,6 +64,10 @@ def test_every_optional_line_works_or_says_what_else_it_needs(kind: str) -> None
         if name in ("based_on", "without", "technique"):
             continue  # the child, tested as a whole below
         tested += 1
+        if kind == "quoted" and name in PATTERN:
+            with pytest.raises(StudyError, match="dwell" if name == "pattern" else "pattern"):
+                problem_of(load_study(switched_on(text, place)))
+            continue
         if name not in ELSEWHERE or (name == "hwhm" and not TECHNIQUES[kind].needs_width):
             assert problem_of(load_study(switched_on(text, place))).scenarios
             continue

@@ -80,8 +80,9 @@ def centre_uncertainty(case: Case) -> Quantiles | None:
 
 
 def sensitivity(case: Case) -> Quantiles:
-    """Standard uncertainty of the splitting seen times the root of live time, Hz s^0.5, no systematics."""
-    return spread(case, lambda real: np.sqrt(real.noise), "Hz s^0.5")
+    """Standard uncertainty of the splitting seen at the budget × root of live time, Hz s^0.5, no systematics."""
+    budget = np.asarray(case.budget)
+    return spread(case, lambda real: np.sqrt(real.averaging.noise_level(budget)), "Hz s^0.5")
 
 
 def required_times(case: Case) -> tuple[RequiredTime, RequiredTime]:

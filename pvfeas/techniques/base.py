@@ -6,6 +6,8 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any, ClassVar
 
+import numpy as np
+
 from pvfeas.keys import quantity
 from pvfeas.laws import Array
 from pvfeas.tables import Line
@@ -52,6 +54,13 @@ class Technique:
     def interrogation_width(self, line: Line) -> Array | None:
         """Full width in Hz that systematics and resolution refer to; None where there is none."""
         raise NotImplementedError
+
+    def aliased_noise(self, line: Line, white: Array, flicker: Array, random_walk: Array) -> Array:
+        """Reference noise near multiples of the cycle's frequency that a cycle lets in, Hz^2/Hz: Σ |s_k|^2 S(k/cycle).
+
+        Zero for a sensitivity that is even over the whole cycle.
+        """
+        return np.zeros((1, 1))
 
     def warnings(self, line: Line) -> tuple[tuple[str, str], ...]:
         """Doubts about the model at the nominal values, as (code, message)."""

@@ -10,6 +10,7 @@ import numpy as np
 
 from pvfeas.keys import choice, fraction, positive, quantity
 from pvfeas.laws import Array
+from pvfeas.switching_noise import aliased_uniform
 from pvfeas.tables import Line
 from pvfeas.techniques.base import Technique
 
@@ -82,6 +83,11 @@ class Ramsey(Technique):
         one = both_states_uncertainty if self.readout == "both states" else one_state_uncertainty
         sigma = one(contrast, self.free_time, self.molecules_per_cycle(), self.readout_noise)
         return np.asarray((sigma * self.excess_noise) ** 2)
+
+    def aliased_noise(self, line: Line, white: Array, flicker: Array, random_walk: Array) -> Array:
+        """Even over the free time, blind in the idle time."""
+        cycle = self.cycle_time(line)
+        return aliased_uniform(self.free_time / cycle, cycle, white, flicker, random_walk)
 
     def interrogation_width(self, line: Line) -> Array | None:
         """Full width of the central fringe, 1/(2 T), Hz."""

@@ -11,6 +11,8 @@ import numpy as np
 from pvfeas.centre_bounds import COARSE, FREE, kappa
 from pvfeas.keys import choice, choices, positive, quantity
 from pvfeas.laws import Array
+from pvfeas.profiles import slope
+from pvfeas.switching_noise import aliased_shape
 from pvfeas.tables import Line
 from pvfeas.techniques.base import Technique
 
@@ -29,6 +31,9 @@ def shot_noise_variance(kappa_: Array, fwhm: Array, spacing: Array, counts: Arra
     counts: of the line alone, above background, in one point at its peak.
     """
     return np.asarray(kappa_**2 * fwhm * spacing / counts)
+
+
+BINS = (np.arange(64) + 0.5) / 64 - 0.5  # along a scan
 
 
 @dataclass(frozen=True)
@@ -96,6 +101,15 @@ class Scan(Technique):
         if self.noise == "shot":
             return np.asarray(excess * shot_noise_variance(factor, fwhm, self.spacing(), np.asarray(self.counts)))
         return np.asarray(excess * white_noise_variance(factor, fwhm, self.spacing(), self.point_snr()))
+
+    def aliased_noise(self, line: Line, white: Array, flicker: Array, random_walk: Array) -> Array:
+        """Sensitivity as the square of the line's slope along the scan."""
+        if not (np.any(white) or np.any(flicker) or np.any(random_walk)):
+            return np.zeros((1, 1))
+        fwhm = np.asarray(line.fwhm)[..., None]
+        along = np.asarray(self.span)[..., None] * BINS + np.asarray(self.centre_offset)[..., None]
+        shape = np.square(slope(line.profile, along / fwhm))
+        return aliased_shape(shape, self.cycle_time(line), white, flicker, random_walk)
 
     def interrogation_width(self, line: Line) -> Array | None:
         """The line's full width, Hz."""
