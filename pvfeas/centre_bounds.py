@@ -22,7 +22,7 @@ from functools import lru_cache
 import numpy as np
 
 from pvfeas.laws import Array
-from pvfeas.profiles import PROFILES, Profile
+from pvfeas.profiles import Profile, profile_of
 
 FREE = ("amplitude", "width", "baseline", "slope", "asymmetry")
 ODD = ("slope", "asymmetry")  # the others do not couple to the centre of a centred scan
@@ -44,14 +44,14 @@ def columns(profile: Profile, x: Array, free: tuple[str, ...]) -> list[Array]:
     """
     value = profile.value(x)
     slope = profile.slope_from(x, value)
-    every: dict[str, Callable[[], Array]] = {
-        "amplitude": lambda: value,
-        "width": lambda: x * slope,
-        "baseline": lambda: np.ones_like(x),
-        "slope": lambda: x,
-        "asymmetry": lambda: profile.partner(x),
+    every: dict[str, Callable[[], list[Array]]] = {
+        "amplitude": lambda: [value],
+        "width": lambda: profile.widths(x, value, slope),
+        "baseline": lambda: [np.ones_like(x)],
+        "slope": lambda: [x],
+        "asymmetry": lambda: [profile.partner(x)],
     }
-    return [every[name]() for name in FREE if name in free] + [slope]
+    return [column for name in FREE if name in free for column in every[name]()] + [slope]
 
 
 def information_matrix(vectors: list[Array], weights: Array | None) -> list[list[Array]]:
@@ -147,19 +147,22 @@ def shot_weights(profile: Profile, x: Array, background: Array) -> Array:
 
 
 def kappa(
-    profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array | None = None
-) -> Array:
+    profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array | None = None,
+    share: Array | None = None,
+) -> Array:  # fmt: skip
     """kappa of a scan, infinite where the points cannot tell the free parameters apart.
 
     That is: fewer points than parameters, or nuisance parameters that raise sigma by a factor of
     thousands (where double precision ends: LEAST_LEFT).
 
-    profile: lorentzian or gaussian; free: nuisance parameters; span, offset: in FWHM; points: how
+    profile: lorentzian, gaussian or voigt; share: fL/(fL + fG) of a Voigt line, whose two widths are free together;
+    free: nuisance parameters; span, offset: in FWHM; points: how
     many; background: counts per point over those of the line at its peak (shot noise), or None (white).
     All broadcast. Each element depends on its own numbers only.
     """
     behind = np.asarray(-1.0 if background is None else background, dtype=float)
-    parts = (_grained(span), _grained(offset), np.asarray(points, dtype=float), behind)
+    mixed = np.asarray(-1.0 if share is None else share, dtype=float)
+    parts = (_grained(span), _grained(offset), np.asarray(points, dtype=float), behind, mixed)
     shape = np.broadcast_shapes(*(part.shape for part in parts))
     if 0 in shape:
         return np.empty(shape)
@@ -176,14 +179,14 @@ def _grained(values: Array) -> Array:
 
 @lru_cache(maxsize=4096)
 def _kappa_at(
-    profile: str, free: tuple[str, ...], span: float, offset: float, points: float, background: float
+    profile: str, free: tuple[str, ...], span: float, offset: float, points: float, background: float, share: float
 ) -> float:
-    rows = (np.array([one]) for one in (span, offset, points, background))
+    rows = (np.array([one]) for one in (span, offset, points, background, share))
     return float(_kappa_of_rows(profile, free, *rows)[0])
 
 
 def _kappa_of_rows(
-    profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array
+    profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array, share: Array
 ) -> Array:
     information = np.empty(span.shape)
     coarse = np.where((points > MOST_SUMMED) & (span > DENSE * points), NEAREST, INTEGRATED)
@@ -193,9 +196,9 @@ def _kappa_of_rows(
         for half in (False, True):
             chosen = np.flatnonzero((label == each) & ((offset == 0) == half))
             if chosen.size:
-                rows = (span[chosen], offset[chosen], points[chosen], background[chosen])
-                information[chosen] = _information(PROFILES[profile], free, int(kind[chosen[0]]), half, *rows)
-    enough = (points > len(set(free))) & (information > 0)
+                rows = (span[chosen], offset[chosen], points[chosen], background[chosen], share[chosen])
+                information[chosen] = _information(profile, free, int(kind[chosen[0]]), half, *rows)
+    enough = (points > len(set(free)) + int(profile == "voigt" and "width" in free)) & (information > 0)
     with np.errstate(divide="ignore"):
         return np.asarray(np.where(enough, 1.0 / np.sqrt(information), np.inf))
 
@@ -213,18 +216,19 @@ def _nodes(kind: int, half: bool, span: Array, offset: Array, points: Array) -> 
 
 
 def _information(
-    profile: Profile, free: tuple[str, ...], kind: int, half: bool, span: Array, offset: Array, points: Array,
-    background: Array,
+    name: str, free: tuple[str, ...], kind: int, half: bool, span: Array, offset: Array, points: Array,
+    background: Array, share: Array,
 ) -> Array:  # fmt: skip
     """Information on the centre of draws that share their kind of nodes; half: all of them centred."""
     coupled = tuple(name for name in FREE if name in free and (name in ODD or not half))
     white = bool(background[0] < 0)
     flat = white and kind == SUMMED  # all weights of a draw are equal
-    size = len(coupled) + 1
+    size = len(coupled) + 1 + int(name == "voigt" and "width" in coupled)
     matrix = [[np.empty(span.shape) for _ in range(i + 1)] for i in range(size)]
     for start in range(0, span.size, ROWS):
         rows = slice(start, start + ROWS)
         x, weights = _nodes(kind, half, span[rows], offset[rows], points[rows])
+        profile = profile_of(name, share[rows, None])
         if not white:
             weights = weights * shot_weights(profile, x, background[rows, None])
         found = information_matrix(columns(profile, x, coupled), None if flat else weights)

@@ -11,7 +11,8 @@ from pvfeas.errors import QuantityError
 from pvfeas.faults import Faults
 from pvfeas.keys import Key, keys_of
 from pvfeas.laws import Exact, Law
-from pvfeas.problem import Ensemble, Expression, Input, Problem, ScenarioProblem, Template
+from pvfeas.line import shape_of
+from pvfeas.problem import Ensemble, Expression, Input, Problem, ScenarioProblem, Template, width_address
 from pvfeas.quantity import Quantity, parse
 from pvfeas.references import Places, dimension_text, fits
 from pvfeas.study import Scenario, Study, Table, Written
@@ -200,6 +201,8 @@ class Compiler:
             return self.field(line["fwhm"], keys_of(Line)["fwhm"])
         if "hwhm" in line:
             return Expression(2.0).times(self.field(line["hwhm"], HWHM))
+        if shape_of(set(line)):
+            return Expression(inputs=(width_address(scenario.name),))
         if self.faults.found:  # the width may be what is wrong
             return Expression()
         self.complain(

@@ -9,6 +9,7 @@ import numpy as np
 
 from pvfeas.averaging import purity
 from pvfeas.faults import Faults
+from pvfeas.line import shape_of
 from pvfeas.nominal import nominal_draws
 from pvfeas.points import draw
 from pvfeas.problem import Draws, Expression, Problem, ScenarioProblem
@@ -102,7 +103,7 @@ def systematics_fit(study: Study, one: ScenarioProblem, written: Scenario, fault
         address = size.address.rpartition(".")[0] + ".on"
         if on == "frequency" and "frequency" not in one.line.quantities:
             faults.add(size.line, address, 'on = "frequency" without a frequency', 'give line = { frequency = "…" }')
-        if on == "width" and technique.kind == "quoted" and "fwhm" not in one.line.quantities:
+        if on == "width" and technique.kind == "quoted" and not has_width(one):
             faults.add(size.line, address, 'on = "width" without a width', 'give line = { fwhm = "…" }')
         if on == "scale" and study.goal.get("kind") != "measure":
             faults.add(
@@ -117,9 +118,16 @@ def systematics_fit(study: Study, one: ScenarioProblem, written: Scenario, fault
             )
 
 
+def has_width(one: ScenarioProblem) -> bool:
+    """Whether the line has a width, given or composed."""
+    keys = set(one.line.quantities)
+    return "fwhm" in keys or bool(shape_of(keys))
+
+
 def unresolved(one: ScenarioProblem, written: Scenario, nominal: Draws, maker: Compiler) -> None:
     """The splitting must stay small against the interrogation width."""
-    line, technique = one.line.at(nominal), one.technique_a.at(nominal)
+    drawn = one.with_width(nominal)
+    line, technique = one.line.at(drawn), one.technique_a.at(drawn)
     width = technique.interrogation_width(line)
     if width is None:
         return

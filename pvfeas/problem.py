@@ -121,6 +121,16 @@ class ScenarioProblem:
     floor_declared: bool
     schedule_declared: bool
 
+    def with_width(self, draws: Draws) -> Draws:
+        """The draws, and the line's full width on them where it is composed, by its address."""
+        width = self.line.at(draws).width
+        return draws if width is None else {**draws, width_address(self.name): width}
+
+
+def width_address(name: str) -> str:
+    """Stands in expressions for the width of a scenario's line that no single input gives."""
+    return f"{name}.line (full width)"
+
 
 @dataclass(frozen=True)
 class Problem:

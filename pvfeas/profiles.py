@@ -8,11 +8,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from scipy import special
 
 from pvfeas.laws import Array
+from pvfeas.widths import voigt_width
 
 LN2 = float(np.log(2.0))
 ROOT_LN2 = float(np.sqrt(LN2))
@@ -68,9 +70,63 @@ class Profile:
     slope_from: Callable[[Array, Array], Array]  # the slope where the value is known already
     partner: Callable[[Array], Array]
 
+    def widths(self, x: Array, value: Array, slope: Array) -> list[Array]:
+        """Derivatives by the free widths at fixed peak, up to factors: x dg/dx."""
+        return [x * slope]
+
     def width_derivative(self, x: Array) -> Array:
         """FWHM × dg/dFWHM at a fixed frequency: -x dg/dx."""
         return np.asarray(-x * self.slope(x))
+
+
+class Voigt(Profile):
+    """The Voigt profile of unit peak against x in its own full widths, for shares fL/(fL + fG) of shape (rows, 1).
+
+    g = Re w(z)/Re w(i y), z = (nu + i fL/2) sqrt(4 ln 2)/fG, w the Faddeeva function; the Hilbert partner is
+    Im w(z)/Re w(i y), w' = 2 i/sqrt(pi) - 2 z w. Free widths are both, the Lorentzian and the Gaussian one.
+    """
+
+    def __init__(self, share: Array) -> None:
+        super().__init__("voigt", self._value, self._slope, self._slope_from, self._partner)
+        gaussian_part = np.maximum(1.0 - share, 1e-9)
+        object.__setattr__(self, "_stretch", 2.0 * ROOT_LN2 * voigt_width(share, gaussian_part) / gaussian_part)
+        object.__setattr__(self, "_y", ROOT_LN2 * share / gaussian_part)
+        object.__setattr__(self, "_peak", special.erfcx(self._y))
+        object.__setattr__(self, "_last", (None, None, None))
+
+    _stretch: Array
+    _y: Array
+    _peak: Array
+    _last: tuple[Any, Any, Any]
+
+    def _waves(self, x: Array) -> tuple[Any, Any]:
+        """z and w(z); kept while x is the same array."""
+        if self._last[0] is not x:
+            z = self._stretch * x + 1j * self._y
+            object.__setattr__(self, "_last", (x, z, special.wofz(z)))
+        return self._last[1], self._last[2]
+
+    def _value(self, x: Array) -> Array:
+        return np.asarray(self._waves(x)[1].real / self._peak)
+
+    def _slope(self, x: Array) -> Array:
+        z, w = self._waves(x)
+        return np.asarray((-2.0 * z * w).real * self._stretch / self._peak)
+
+    def _slope_from(self, x: Array, value: Array) -> Array:
+        return self._slope(x)
+
+    def _partner(self, x: Array) -> Array:
+        return np.asarray(self._waves(x)[1].imag / self._peak)
+
+    def widths(self, x: Array, value: Array, slope: Array) -> list[Array]:
+        """By the Lorentzian and by the Gaussian width at fixed peak, up to factors."""
+        z, w = self._waves(x)
+        change = 2j / np.sqrt(np.pi) - 2.0 * z * w
+        at_peak = 2.0 / np.sqrt(np.pi) - 2.0 * self._y * self._peak  # Im w'(i y)
+        by_lorentzian = (-change.imag + value * at_peak) / self._peak
+        by_gaussian = (-(change * z).real - value * self._y * at_peak) / self._peak
+        return [np.asarray(by_lorentzian), np.asarray(by_gaussian)]
 
 
 PROFILES: dict[str, Profile] = {
@@ -79,6 +135,6 @@ PROFILES: dict[str, Profile] = {
 }
 
 
-def slope(profile: str, x: Array) -> Array:
-    """dg/dx of a profile by name."""
-    return np.asarray(PROFILES[profile].slope(x))
+def profile_of(name: str, share: Array | None = None) -> Profile:
+    """A profile by name; a Voigt one needs its share fL/(fL + fG) of shape (rows, 1)."""
+    return Voigt(np.asarray(share)) if name == "voigt" else PROFILES[name]

@@ -37,6 +37,7 @@ class Realisation:
 
 def realise(scenario: ScenarioProblem, draws: Draws, signal: Array | None = None) -> Realisation:
     """Evaluate a scenario on draws; signal (|splitting seen|, Hz) is needed by systematics on the signal only."""
+    draws = scenario.with_width(draws)
     line = scenario.line.at(draws)
     technique_a, technique_b = scenario.technique_a.at(draws), scenario.technique_b.at(draws)
     switching, schedule = scenario.switching.at(draws), scenario.schedule.at(draws)

@@ -302,6 +302,7 @@ class Understood:
 
     title: str
     rows: tuple[InputRow, ...]
+    widths: tuple[str, ...]  # of each line that is composed: what makes it, what dominates
     exact: tuple[str, ...]
     assumed: tuple[str, ...]
     without_source: tuple[str, ...]

@@ -7,14 +7,16 @@ from typing import Any
 
 from pvfeas.inheritance import Leaf, Node, Tree, merge
 from pvfeas.keys import keys_of
+from pvfeas.line import COMPOSED, GIVEN, VOIGT
 from pvfeas.reading import Reader, _short
 from pvfeas.study import Scenario, Table, Written
 from pvfeas.suggestions import did_you_mean, suggest
-from pvfeas.tables import Reference, Switching
+from pvfeas.tables import Line, Reference, Switching
 from pvfeas.techniques import TECHNIQUES
 from pvfeas.vocabulary import ALTERNATIVES, PARTS, SCENARIO, SPLITTING
 
 NAME = re.compile(r"[\w-]+")
+WIDTHS = (*GIVEN, *VOIGT, *COMPOSED)
 OF = ("difference", "one enantiomer")
 HOW_SPLITTING = 'write splitting = { value = "1.1(3) Hz", of = "difference" } (or of = "one enantiomer")'
 
@@ -36,9 +38,10 @@ def read_scenario(tree: Tree, parent: Tree | None, own: Tree, reader: Reader) ->
     }
     systematics = _entries("systematics", tree, own, above, reader)
     reference = _entries("reference", tree, own, above, reader)
-    switching = nodes.get("switching")
-    if above is None or switching is not above.get("switching"):
-        _own_rules(Switching, tables["switching"], switching, f"{name}.switching", own.lines["switching"], reader)
+    for part, kind in (("switching", Switching), ("line", Line)):
+        node = nodes.get(part)
+        if above is None or node is not above.get(part):
+            _own_rules(kind, tables[part], node, f"{name}.{part}", own.lines[part], reader)
     technique_b, samples_b = _arm_b(nodes, tree, own, reader)
     _rules(tree, technique, tables, technique_b, above, reader)
     if reference and technique is not None:
@@ -166,12 +169,17 @@ def _entries(part: str, tree: Tree, own: Tree, above: Node | None, reader: Reade
 
 
 def _own_rules(
-    part: type[Switching] | type[Reference], table: Table, node: Any, address: str, line: int, reader: Reader
+    part: type[Switching] | type[Reference] | type[Line],
+    table: Table,
+    node: Any,
+    address: str,
+    line: int,
+    reader: Reader,
 ) -> None:
     """What is wrong with the keys of one table taken together."""
     if not isinstance(node, dict):
         return
-    known = keys_of(part)
+    known = [*keys_of(part), *("hwhm",)] if part is Line else list(keys_of(part))
     absorbed = {suggest(one, known) for one in node if one not in known}
     for key, found, right in part.rules(dict.fromkeys([*node, *absorbed], True) | dict(table.options)):
         if key not in absorbed:
@@ -288,28 +296,16 @@ def _rules(
     name, line = tree.name, tables["line"]
     if technique is not None:
         part = TECHNIQUES[technique.kind]
-        wide = {"fwhm", "hwhm"}
         written = tree.nodes.get("line")
-        has = isinstance(written, dict) and (
-            wide & set(written)
-            or any(
-                suggest(k, wide | {"frequency", "profile"}) in wide
-                for k in written
-                if k not in ("frequency", "profile")
-            )
-        )
+        named = {suggest(key, WIDTHS) or key for key in written} if isinstance(written, dict) else set()
         inherits = (
             above is not None
             and isinstance(above.get("technique"), dict)
             and _kind_of(above["technique"]) == technique.kind
         )
-        if part.needs_width and not has and not inherits and not isinstance(written, Leaf):
-            reader.faults.add(
-                line.line,
-                f"{name}.line.fwhm",
-                "is missing",
-                f'a {technique.kind} needs the width: write line = {{ fwhm = "12(2) kHz" }}',
-            )
+        if part.needs_width and not isinstance(written, Leaf) and not named & set(WIDTHS) and not inherits:
+            right = f'a {technique.kind} needs the width: write line = {{ fwhm = "12(2) kHz" }}'
+            reader.faults.add(line.line, f"{name}.line.fwhm", "is missing", right)
         stated = technique.kind == "quoted" and technique.options.get("of", "splitting") == "splitting"
         if stated and technique_b is not None:
             reader.faults.add(
@@ -318,9 +314,6 @@ def _rules(
                 "an arm b for a quoted splitting",
                 'the uncertainty is that of both arms: drop it, or quote of = "one enantiomer"',
             )
-    if line.written and {"fwhm", "hwhm"} <= set(line.quantities):
-        hwhm = line.quantities["hwhm"]
-        reader.faults.add(hwhm.line, hwhm.address, "both fwhm and hwhm", "give one of them", hwhm.file)
     samples = tables["samples"].quantities
     for one, other in (("mass", "consumption"), ("consumption", "mass")):
         if (

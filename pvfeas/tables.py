@@ -14,17 +14,8 @@ import numpy as np
 
 from pvfeas.keys import choice, flag, fraction, integer, pairs, positive, quantity, text
 from pvfeas.laws import Array
+from pvfeas.line import Line
 from pvfeas.patterns import default_live_fraction, faults_of
-
-
-@dataclass(frozen=True)
-class Line:
-    """The line that is measured; every width is a full width at half maximum."""
-
-    frequency: Array | None = positive("Hz", "frequency of the line", example="29.1 THz")
-    profile: str = choice("shape of the line", "lorentzian", "gaussian", default="lorentzian")
-    fwhm: Array | None = positive("Hz", "full width at half maximum", example="12(2) kHz")
-    photons: int = integer("photons of the transition: laser noise counts that often", lower=1, upper=20, default=1)
 
 
 @dataclass(frozen=True)
@@ -184,3 +175,6 @@ class Goal:
         "feldman-cousins-bounded", "cls",
     )  # fmt: skip
     relative_uncertainty: float | None = positive("1", "goal of a measurement: sigma over splitting", example="0.2")
+
+
+__all__ = ["Goal", "Line", "Reference", "Samples", "Schedule", "Switching", "Systematic"]

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from typing import Any
+
+import numpy as np
 
 from pvfeas.compiler import problem_of
 from pvfeas.laws import Beta, Exact, Law, Lognormal, LogUniform, Normal, Truncated, TwoPiece, Uniform
-from pvfeas.problem import Ensemble
+from pvfeas.nominal import nominal_draws
+from pvfeas.problem import Ensemble, Problem
 from pvfeas.quantity import Quantity
 from pvfeas.references import addresses, tables_of
 from pvfeas.results import Difference, InputRow, Understood, Warned
@@ -41,9 +44,25 @@ def understood(study: Study) -> Understood:
         if quantity is not None and not quantity.source:
             bare.append(one.address)
     return Understood(
-        title=study.title, rows=tuple(rows), exact=tuple(exact), assumed=tuple(assumed), without_source=tuple(bare),
+        title=study.title, rows=tuple(rows), widths=tuple(compositions(problem)),
+        exact=tuple(exact), assumed=tuple(assumed), without_source=tuple(bare),
         warnings=tuple(Warned(*one) for one in problem.warnings),
     )  # fmt: skip
+
+
+def compositions(problem: Problem) -> Iterator[str]:
+    """For each composed line its parts at the medians, what they add up to, and which one dominates."""
+    nominal = nominal_draws(problem.inputs)
+    for one in problem.scenarios:
+        line = one.line.at(nominal)
+        parts = {name: (kind, float(np.reshape(width, -1)[0])) for name, (kind, width) in line.parts().items()}
+        if not parts or line.width is None:
+            continue
+        listed = ", ".join(f"{name} {value_text(width, 'Hz')} ({kind})" for name, (kind, width) in parts.items())
+        total = value_text(float(np.reshape(line.width, -1)[0]), "Hz")
+        largest = max(parts, key=lambda name: parts[name][1])
+        together = f"together {total} ({line.shape}), {largest} dominates"
+        yield f"{one.name}.line: {listed}; {together}; full widths at the medians"
 
 
 def law_in_words(law: Law | Ensemble, unit: str) -> str:
@@ -75,7 +94,9 @@ def law_in_words(law: Law | Ensemble, unit: str) -> str:
         ends = f"{digits(law.lower)} and {digits(law.upper)}"
         return f"beta between {ends}, mean {show(law.mean)}, standard deviation {show(law.sd)}"
     if isinstance(law, Truncated):
-        return f"{law_in_words(law.base, unit)}, cut to what is possible"
+        lost = 1.0 - float(law.base.below(law.upper)) + float(law.base.below(law.lower))
+        cut = f", cut to what is possible ({100 * lost:.2g} %)" if lost > 1e-6 else ""
+        return f"{law_in_words(law.base, unit)}{cut}"
     return type(law).__name__
 
 

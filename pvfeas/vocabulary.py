@@ -21,14 +21,10 @@ SPLITTING = Key("quantity", "predicted splitting nu(a) - nu(b), signed", "Hz", r
 
 LATER = "is planned for a later version of pvfeas"
 LATER_KEYS: dict[str, tuple[str, ...]] = {
-    "line": (
-        "natural", "pressure", "pressure_coefficient", "saturation", "laser", "beam_radius", "speed", "temperature",
-        "mass", "lorentzian", "gaussian",
-    ),
     "scan": ("modulation",),
 }  # fmt: skip
 LATER_KINDS = ("two-point", "free-decay", "doublet", "parity-evolution")
-LATER_CHOICES = {"profile": ("voigt",), "detection": ("dispersion", "first-derivative", "1f", "2f", "3f")}
+LATER_CHOICES = {"detection": ("dispersion", "first-derivative", "1f", "2f", "3f")}
 
 
 def keys_for(table: str, kind: str = "") -> Mapping[str, Key]:

@@ -11,6 +11,7 @@ import pytest
 from pvfeas import StudyError, problem_of
 from pvfeas.errors import Fault
 from pvfeas.keys import Key, keys_of
+from pvfeas.line import COMPOSED, VOIGT
 from pvfeas.study import Study
 from pvfeas.tables import Goal, Line, Reference, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques import TECHNIQUES
@@ -29,6 +30,10 @@ MEASURE = {"kind": "measure", "relative_uncertainty": 0.2, "power": 0.9, "within
 NEEDS_GOAL = {"limit": EXCLUDE, "construction": EXCLUDE, "relative_uncertainty": MEASURE}
 NEEDS_AVERAGES = {"every": {"averages": "per reset", "every": "1 d"}, "after": {"averages": "as 1/t", "after": "1 d"}}
 
+MADE_OF = {
+    "natural": "2 kHz", "pressure": "0.1 Pa", "pressure_coefficient": "80 kHz/Pa", "saturation": 0.5, "laser": "1 kHz",
+    "beam_radius": "5 mm", "speed": "50 m/s", "temperature": "4 K", "mass": "300 u",
+}  # fmt: skip
 PATTERN = {"pattern": "ABBA", "dwell": "20 s"}
 BOTH = {"mode": "simultaneous", "rejection": 30}
 REFERENCE = {
@@ -47,6 +52,11 @@ def good(table: str, kind: str, key: str) -> Tables:
     line = {"frequency": "29.1 THz", "fwhm": "12(2) kHz"}
     if key == "hwhm":
         line = {"frequency": "29.1 THz", "hwhm": "6(1) kHz"}
+    if table == "line" and key in (*VOIGT, *COMPOSED):
+        line = {"frequency": "29.1 THz"} | ({"lorentzian": "3 kHz", "gaussian": "5 kHz"} if key in VOIGT else MADE_OF)
+        instead = {"lifetime": "natural", "pressure_half_coefficient": "pressure_coefficient"}.get(key)
+        line = {key: "80 µs" if key == "lifetime" else "40 kHz/Pa"} | line if instead else line
+        line.pop(instead or "", None)
     floor = {"size": "0.1 Hz ×/ 1.5", "averages": "never"}
     more: Tables = {"switching": dict(BOTH if key == "rejection" else PATTERN)} if table == "switching" else {}
     if table == "reference.laser":

@@ -17,6 +17,7 @@ FILES = sorted(PACKAGE.rglob("*.py"))
 NUMBER_HALF = (
     ("errors", "constants", "keys", "options", "generating_vector", "showing", "suggestions"),
     ("laws", "results"),
+    ("widths", "line"),
     ("frequency_noise", "patterns", "switching_noise", "tables", "profiles", "thresholds"),
     ("techniques", "centre_bounds", "limits", "systematics", "schedule"),
     ("problem", "reference", "averaging", "decision"),

@@ -9,6 +9,7 @@ import pytest
 
 from pvfeas import StudyError, UsageError, load_study, problem_of
 from pvfeas.keys import keys_of
+from pvfeas.line import COMPOSED, VOIGT
 from pvfeas.starters import starter
 from pvfeas.tables import Goal, Line, Samples, Schedule, Switching, Systematic
 from pvfeas.techniques import TECHNIQUES
@@ -64,6 +65,10 @@ def test_every_optional_line_works_or_says_what_else_it_needs(kind: str) -> None
         if name in ("based_on", "without", "technique"):
             continue  # the child, tested as a whole below
         tested += 1
+        if name in (*COMPOSED, *VOIGT):
+            with pytest.raises(StudyError, match="beside fwhm"):
+                problem_of(load_study(switched_on(text, place)))
+            continue
         if kind == "quoted" and name in PATTERN:
             with pytest.raises(StudyError, match="dwell" if name == "pattern" else "pattern"):
                 problem_of(load_study(switched_on(text, place)))

@@ -38,7 +38,7 @@ def understood_text(found: Understood, width: int = WIDTH, colour: bool = False)
         said = "; ".join(each for each in (one.law, one.status, f"source: {one.source}" if one.source else "") if each)
         parts.append(f"{one.address} = {one.text}\n    {wrapped(said, max(text - 4, 20), '    ')}")
     rows = "\n".join(parts[1:] if found.title else parts)
-    parts = [*parts[: 1 if found.title else 0], rows]
+    parts = [*parts[: 1 if found.title else 0], rows, *(wrapped(one, text, "  ") for one in found.widths)]
     for name, listed in (
         ("exact", found.exact),
         ("assumed or extrapolated", found.assumed),

@@ -135,8 +135,9 @@ def doubts(problem: Problem, scenarios: Sequence[ScenarioProblem]) -> tuple[Warn
     nominal = nominal_draws(problem.inputs)
     found = []
     for scenario in scenarios:
+        drawn = scenario.with_width(nominal)
         for template in dict.fromkeys((id(scenario.technique_a), id(scenario.technique_b))):
             part = scenario.technique_a if template == id(scenario.technique_a) else scenario.technique_b
-            for code, message in part.at(nominal).warnings(scenario.line.at(nominal)):
+            for code, message in part.at(drawn).warnings(scenario.line.at(drawn)):
                 found.append(Warned(code, f"{scenario.name}.technique", message))
     return tuple(dict.fromkeys(found))

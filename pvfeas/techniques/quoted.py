@@ -43,4 +43,4 @@ class Quoted(Technique):
 
     def interrogation_width(self, line: Line) -> Array | None:
         """The line's full width, if it was given."""
-        return line.fwhm
+        return line.width

@@ -11,7 +11,7 @@ import numpy as np
 from pvfeas.centre_bounds import COARSE, FREE, kappa
 from pvfeas.keys import choice, choices, positive, quantity
 from pvfeas.laws import Array
-from pvfeas.profiles import slope
+from pvfeas.profiles import profile_of
 from pvfeas.switching_noise import aliased_shape
 from pvfeas.tables import Line
 from pvfeas.techniques.base import Technique
@@ -91,11 +91,11 @@ class Scan(Technique):
 
     def centre_variance(self, line: Line) -> Array:
         """Variance of the line centre after one scan, Hz^2."""
-        fwhm = np.asarray(line.fwhm)
+        fwhm = np.asarray(line.width)
         behind = self.background if self.noise == "shot" else None
         factor = kappa(
-            line.profile, self.free, np.asarray(self.span / fwhm), np.asarray(self.centre_offset / fwhm),
-            np.asarray(self.points), behind,
+            line.shape, self.free, np.asarray(self.span / fwhm), np.asarray(self.centre_offset / fwhm),
+            np.asarray(self.points), behind, line.lorentzian_share,
         )  # fmt: skip
         excess = np.asarray(self.excess_noise) ** 2
         if self.noise == "shot":
@@ -106,19 +106,20 @@ class Scan(Technique):
         """Sensitivity as the square of the line's slope along the scan."""
         if not (np.any(white) or np.any(flicker) or np.any(random_walk)):
             return np.zeros((1, 1))
-        fwhm = np.asarray(line.fwhm)[..., None]
+        fwhm = np.atleast_1d(np.asarray(line.width))[..., None]
         along = np.asarray(self.span)[..., None] * BINS + np.asarray(self.centre_offset)[..., None]
-        shape = np.square(slope(line.profile, along / fwhm))
+        share = None if line.lorentzian_share is None else np.atleast_1d(line.lorentzian_share)[..., None]
+        shape = np.square(profile_of(line.shape, share).slope(along / fwhm))
         return aliased_shape(shape, self.cycle_time(line), white, flicker, random_walk)
 
     def interrogation_width(self, line: Line) -> Array | None:
         """The line's full width, Hz."""
-        return line.fwhm
+        return line.width
 
     def warnings(self, line: Line) -> tuple[tuple[str, str], ...]:
         """Points too far apart for the bound to hold wherever they lie, or too few of them for the fit."""
         found = []
-        if np.any(self.spacing() > COARSE * np.asarray(line.fwhm)):
+        if np.any(self.spacing() > COARSE * np.asarray(line.width)):
             message = "points lie further apart than half the FWHM: the bound depends on where they lie"
             found.append(("coarse scan", message))
         parameters = len(set(self.free)) + 1
