@@ -66,14 +66,12 @@ def starter(technique: str) -> str:
     part = TECHNIQUES[technique]
     head = HEAD.format(kind=technique, summary=part.summary, scenario=SCENARIO)
     width = () if part.needs_width else ("fwhm", "profile")
-    made_of = () if part.needs_width else (*COMPOSED, *VOIGT)
-    line = {name: key for name, key in keys_for("line").items() if name not in made_of}
     blocks = [
         f'{head}\ntitle = "A study to start from"',
         _table("goal", keys_for("goal"), shown=GOAL_SHOWN),
         SHARED.rstrip(),
         f"[scenario.{SCENARIO}]\n{SPLITTING.format(size=SIZES.get(technique, '1.2 Hz')).rstrip()}",
-        _table(f"scenario.{SCENARIO}.line", line, hidden=("hwhm", *width, *COMPOSED, *VOIGT)),
+        _table(f"scenario.{SCENARIO}.line", keys_for("line"), hidden=("hwhm", *width, *COMPOSED, *VOIGT)),
         _table(
             f"scenario.{SCENARIO}.technique",
             keys_for("technique", technique),
