@@ -5,7 +5,8 @@
 
 from __future__ import annotations
 
-import os
+import contextlib
+import io
 import sys
 from importlib import import_module
 
@@ -70,28 +71,54 @@ def run(arguments: list[str]) -> int:
     """Run the command line; the exit code."""
     from pvfeas.errors import PvfeasError
 
+    out, err = sys.stdout, sys.stderr
     try:
         code = cli.main(args=arguments, prog_name="pvfeas", standalone_mode=False)
-        sys.stdout.flush()
+        if sys.stdout is not None:
+            sys.stdout.flush()
         return code if isinstance(code, int) else 0
     except click.exceptions.Exit as stop:
         return stop.exit_code
     except click.ClickException as error:
-        error.show()
-        return 2
+        shown = io.StringIO()
+        error.show(file=shown)
+        return say(shown.getvalue().rstrip("\n"), 2)
     except PvfeasError as error:
-        click.echo(str(error), err=True)
-        return 2
+        return say(str(error), 2)
     except (KeyboardInterrupt, click.Abort):
-        click.echo("interrupted", err=True)
-        return 130
+        return say("interrupted", 130)
+    except SystemExit:
+        if sys.stdout is out:
+            raise
+        sys.stdout, sys.stderr = out, err  # click has wrapped them, for the reader of --help has gone
+        return _left(0)
     except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        return 0
+        return _left(0)
+    except OSError as error:
+        return _left(say(f"standard output cannot be written: {(error.strerror or 'unknown reason').lower()}", 2))
     except Exception as bug:
         if "--debug" in arguments:
             raise
-        click.echo(
-            f"pvfeas has a bug: {type(bug).__name__}: {bug}\nplease report it; pvfeas --debug … shows where", err=True
-        )
-        return 1
+        return say(f"pvfeas has a bug: {type(bug).__name__}: {bug}\nplease report it; pvfeas --debug … shows where", 1)
+
+
+def say(message: str, code: int) -> int:
+    """A message on stderr, in what it can show and without control characters; the code. Silent where it is closed."""
+    from pvfeas.output.words import cleaned, encodable
+    from pvfeas.output.writing import silenced
+
+    if sys.stderr is not None:
+        try:
+            with contextlib.suppress(BrokenPipeError):
+                click.echo(encodable(cleaned(message), sys.stderr.encoding or "ascii"), err=True)
+        except OSError:
+            silenced(sys.stderr)
+    return code
+
+
+def _left(code: int) -> int:
+    """The code, with what standard output still holds thrown away."""
+    from pvfeas.output.writing import silenced
+
+    silenced(sys.stdout)
+    return code

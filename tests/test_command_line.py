@@ -9,7 +9,6 @@ import os
 import signal
 import subprocess
 import sys
-import time
 from pathlib import Path
 
 import click
@@ -214,12 +213,15 @@ def test_colour_on_a_terminal_only(study: str, environment: dict[str, str], colo
     assert (b"\x1b[1m" in found) == coloured
 
 
-def test_a_closed_pipe_is_no_error(study: str) -> None:
+@pytest.mark.parametrize(
+    "arguments",
+    [["--help"], ["--version"], ["assess", "--help"], ["new", "scan"], ["convert", "1 Hz"], ["check"], ["resolve"], ["assess", "--json", *FAST]],
+    ids=" ".join,
+)  # fmt: skip
+def test_a_closed_pipe_is_no_error(study: str, arguments: list[str]) -> None:
+    given = [*arguments, study] if arguments[0] in ("check", "resolve") or "--json" in arguments else arguments
     process = subprocess.Popen(
-        [sys.executable, "-m", "pvfeas", "assess", study, "--json", *FAST],
-        stdout=subprocess.PIPE,
-        stderr=subprocess.PIPE,
-        cwd=ROOT,
+        [sys.executable, "-m", "pvfeas", *given], stdout=subprocess.PIPE, stderr=subprocess.PIPE, cwd=ROOT
     )
     assert process.stdout is not None
     process.stdout.close()
@@ -227,18 +229,71 @@ def test_a_closed_pipe_is_no_error(study: str) -> None:
     assert (process.returncode, said) == (0, b"")
 
 
-def test_interruption(tmp_path: Path) -> None:
-    target = tmp_path / "out.json"
+@pytest.mark.skipif(os.name != "posix", reason="a shell's redirections")
+@pytest.mark.parametrize(
+    ("line", "code", "words"),
+    [
+        ("assess {0} --json --tolerance 30 | head -1", 0, ""),
+        ("check {0} > /dev/full", 2, "standard output cannot be written: no space left on device"),
+        ("--help > /dev/full", 2, "standard output cannot be written: no space left on device"),
+        ("check {0} >&-", 2, "standard output cannot be written: it is closed"),
+        ("assess {0} --tolerance 30 >&-", 2, "standard output cannot be written: it is closed"),
+        ("check - <&-", 2, "standard input cannot be read: it is closed"),
+        ("check nowhere.toml 2>&-", 2, ""),
+        ("check nowhere.toml 2>/dev/full", 2, ""),
+        ("assess {0} --tolerance 30 2>&- >/dev/null", 0, ""),
+        ("check /dev/zero", 2, "larger than 1 MB"),
+        ("check /dev/null", 2, "there is no scenario"),
+        ("assess {0} --tolerance 30 -o /dev/full", 2, "/dev/full cannot be written: no space left on device"),
+    ],
+)
+def test_redirections(study: str, line: str, code: int, words: str) -> None:
+    script = f"set -o pipefail; '{sys.executable}' -m pvfeas {line.format(study)}"
+    done = subprocess.run(
+        ["bash", "-c", script], capture_output=True, text=True, encoding="utf-8", cwd=ROOT, timeout=60
+    )
+    assert done.returncode == code, done.stderr
+    assert words in done.stderr
+    assert "Traceback" not in done.stderr
+    assert "bug" not in done.stderr
+    assert (done.stderr == "") == (words == "")
+
+
+def on_a_terminal(arguments: list[str], until: bytes, cwd: Path) -> tuple[int, bytes]:
+    """Run with stderr on a terminal and send SIGINT once that text is there; the code and what was said."""
+    pty = pytest.importorskip("pty")
+    reading, writing = pty.openpty()
     process = subprocess.Popen(
-        [sys.executable, "-m", "pvfeas", "assess", str(BEAM), "--tolerance", "0.001", "--maximum-points", "1048576", "-o", str(target)],
-        stderr=subprocess.PIPE, cwd=ROOT,
+        [sys.executable, "-m", "pvfeas", *arguments], stdout=subprocess.DEVNULL, stderr=writing, cwd=cwd,
+        env={**os.environ, "PYTHONPATH": str(ROOT)},
     )  # fmt: skip
-    time.sleep(4.0)  # past the imports
-    process.send_signal(signal.SIGINT)
-    _, said = process.communicate(timeout=60)
-    assert process.returncode == 130
-    assert said.strip() == b"interrupted"
-    assert list(tmp_path.iterdir()) == []
+    os.close(writing)
+    said = b""
+    while True:
+        try:
+            piece = os.read(reading, 65536)
+        except OSError:  # the other end is closed
+            break
+        if not piece:
+            break
+        said += piece
+        if until in said:
+            process.send_signal(signal.SIGINT)
+            until = b"never said"
+    os.close(reading)
+    return process.wait(60), said
+
+
+def test_interruption(tmp_path: Path) -> None:
+    """In the middle of the work, which says how far it is; files of an earlier run stay as they were."""
+    (tmp_path / "out.json").write_bytes(b"old")
+    targets = ["-o", "out.json", "--figure", "out.svg", "--figure-data", "out.csv"]
+    long = ["assess", str(BEAM), "--tolerance", "0.001", "--maximum-points", "1048576", *targets]
+    code, said = on_a_terminal(long, b"points", tmp_path)
+    assert code == 130
+    assert said.replace(b"\r\n", b"\n").endswith(b" s \r\x1b[K\ninterrupted\n")  # the line of progress is cleared first
+    assert [one.name for one in tmp_path.iterdir()] == ["out.json"]
+    assert (tmp_path / "out.json").read_bytes() == b"old"
 
 
 def test_new_writes_once(tmp_path: Path) -> None:

@@ -5,22 +5,27 @@ from __future__ import annotations
 import csv
 import io
 import json
+from dataclasses import replace
 from typing import Any
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+from rich.cells import cell_len
 
 from pvfeas.compiler import problem_of
 from pvfeas.options import Options
 from pvfeas.output.csv import assessment_csv, curves_csv
-from pvfeas.output.grid import fits, grid
+from pvfeas.output.grid import fits, fold, grid
 from pvfeas.output.json import assessment_content, rounded, to_json
 from pvfeas.output.table import assessment_text, comparison_text, understood_text
 from pvfeas.output.words import encodable, error_text, exact_time, range_text, share, short
 from pvfeas.questions.assess import assess
 from pvfeas.questions.compare import compare
 from pvfeas.questions.curves import curves
+from pvfeas.results import Difference
 from pvfeas.studyfile import load_study
-from pvfeas.understanding import understood
+from pvfeas.understanding import differences, understood
 
 FAST = Options(tolerance=30.0)
 STUDY = """
@@ -131,3 +136,94 @@ def test_curves_as_csv() -> None:
 )  # fmt: skip
 def test_numbers_in_words(made: str, expected: str) -> None:
     assert made == expected
+
+
+LETTERS = st.text(st.sampled_from("abcXYZ012_-.:, σ重é"), max_size=80)
+
+
+@given(LETTERS, st.integers(2, 60), st.integers(0, 2))
+def test_folding_cuts_nothing(text: str, size: int, hanging: int) -> None:
+    lines = fold(text, size, hanging).split("\n")
+    assert "".join("".join(lines).split()) == "".join(text.split())
+    if cell_len(text) > size >= 6:  # the margin is at most half, and a sign of two columns needs room
+        assert max(map(cell_len, lines)) <= size
+
+
+@given(st.lists(st.lists(LETTERS, min_size=4, max_size=4), min_size=1, max_size=5), st.sampled_from([40, 60, 80, 120]))
+def test_any_cells_fit_and_line_up(rows: list[list[str]], width: int) -> None:
+    """Each block of columns starts at places that every line of it respects: a blank stands before each."""
+    for block in grid(rows[0], rows, width).split("\n\n"):
+        lines = block.split("\n")
+        assert max(map(cell_len, lines)) <= width
+
+
+def long_names(size: int) -> str:
+    first = "a_scenario_".ljust(size - 1, "x") + "0"
+    study = STUDY.replace("the_first_apparatus_with_helium", first).replace(
+        "HF =", '"a calculation with each of its approximations named" ='
+    )
+    return study + "".join(
+        f'[scenario.{first[:-1]}{i}]\nbased_on = "{first}"\ntechnique = {{ free_time = "{20 * i} ms", molecules = "{10 * i} ×/ 1.{i}" }}\n'
+        for i in range(1, 5)
+    )
+
+
+@pytest.mark.parametrize("size", [20, 30, 45, 64])
+def test_five_scenarios_with_long_names_fit(size: int) -> None:
+    read = load_study(long_names(size))
+    result = compare(problem_of(read), options=FAST, differences=differences(read, list(read.scenario)))
+    text = comparison_text(result, 80)
+    assert max(cell_len(line) for line in text.splitlines()) <= 80
+    whole = "".join(text.split())
+    for name in read.scenario:
+        assert whole.count(name) >= 2  # folded, not cut
+    assert "if a calculation with each of its" in text
+    assert "approximations named is right" in text
+    assert "20 ms" in text
+
+
+def columns_of(lines: list[str]) -> list[int]:
+    """Where columns start: after a blank that stands in every line, at a sign that some line has there."""
+    size = max(map(len, lines))
+    padded = [line.ljust(size) for line in lines]
+    blank = [all(line[place] == " " for line in padded) for place in range(size)]
+    return [place for place in range(2, size) if blank[place - 1] and blank[place - 2] and not blank[place]]
+
+
+@pytest.mark.parametrize("width", [80, 100, 140])
+def test_every_row_starts_its_columns_at_the_same_places(width: int) -> None:
+    names = [one.name for one in RESULT.scenarios]
+    seen: list[str] = []
+    for block in assessment_text(RESULT, width).split("\n\n"):
+        lines = block.splitlines()
+        if not any(line and set(line) <= {"─"} for line in lines):
+            continue
+        header = lines[0]
+        starts = columns_of([line for line in lines if set(line) != {"─"}])
+        here = [name for name in names if name in header]
+        assert starts == [header.index(name) for name in here]
+        seen += here
+        for line in lines[2:]:
+            assert all(line[start : start + 1].strip() for start in starts), line  # no cell is empty
+    assert seen == names
+
+
+def test_differences_line_up_where_no_table_fits() -> None:
+    names = ("one", "a_longer_name")
+    found = (Difference("line.fwhm", ("5 kHz", "word " * 30)),)
+    result = compare(PROBLEM, tuple(one.name for one in RESULT.scenarios[:2]), FAST)
+    named = tuple(replace(one, name=name) for one, name in zip(result.assessment.scenarios, names, strict=True))
+    text = comparison_text(replace(result, assessment=replace(result.assessment, scenarios=named), differences=found))
+    block = text.split("What differs:\n\n")[1].split("\n\n")[0].splitlines()
+    assert block[0] == "line.fwhm"
+    assert block[1] == "  one            5 kHz"
+    assert block[2].startswith("  a_longer_name  word word")
+    assert block[3].startswith(" " * 17 + "word")
+
+
+def test_ascii_says_the_same_in_as_many_lines() -> None:
+    text = assessment_text(RESULT)
+    plain = encodable(text, "ascii")
+    assert plain.isascii()
+    assert plain.count("?") == text.count("?")
+    assert len(plain.splitlines()) == len(text.splitlines())

@@ -13,11 +13,13 @@ from pvfeas.commands.shared import (
     emit,
     format_of,
     format_options,
+    known,
     number_options,
     options_of,
     read_study,
     screen,
     study_options,
+    targets_of,
 )
 
 
@@ -36,15 +38,18 @@ def command(
     from pvfeas.output.table import assessment_text
     from pvfeas.questions.assess import assess
 
-    kind, options, ticker = format_of(form, output), options_of(given), Ticker(given["quiet"])
-    problem = problem_of(read_study(study, settings))
-    result = assess(problem, options, names, ticker)
-    ticker.done()
+    kind, options = format_of(form, output), options_of(given)
+    targets_of(study, output, given)
+    read = read_study(study, settings)
+    known(names, read)
+    problem = problem_of(read)
+    with Ticker(given["quiet"]) as ticker:
+        result = assess(problem, options, names, ticker)
     texts = {
         "json": lambda: to_json(assessment_content(result)),
         "csv": lambda: assessment_csv(result),
         "text": lambda: assessment_text(result, *screen(output)),
     }
     draw_figures(problem, result, result.question, given)
-    emit(texts[kind](), output)
+    emit(texts[kind](), output, "json" if kind == "json" else "")
     return code_of([one.chance.value for one in result.scenarios], given["fail_under"])

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from pvfeas.commands.shared import emit, output_option, read_study, screen, study_options
+from pvfeas.commands.shared import emit, output_option, read_study, screen, study_options, targets_of
 
 
 @click.command("check")
@@ -15,6 +15,7 @@ def command(study: str, settings: tuple[str, ...], output: str) -> int:
     from pvfeas.output.table import understood_text
     from pvfeas.understanding import understood
 
+    targets_of(study, output, {})
     found = understood(read_study(study, settings))
     emit(understood_text(found, *screen(output)), output)
     return 0

@@ -13,17 +13,19 @@ from pvfeas.commands.shared import (
     emit,
     format_of,
     format_options,
+    known,
     number_options,
     options_of,
     read_study,
     screen,
     study_options,
+    targets_of,
 )
 
 
 @click.command("compare")
 @study_options
-@click.argument("names", nargs=-1, metavar="[NAME]…")
+@click.argument("names", nargs=-1, metavar="[NAME]...")
 @format_options
 @number_options
 def command(
@@ -38,17 +40,19 @@ def command(
     from pvfeas.questions.planning import chosen
     from pvfeas.understanding import differences
 
-    kind, options, ticker = format_of(form, output), options_of(given), Ticker(given["quiet"])
+    kind, options = format_of(form, output), options_of(given)
+    targets_of(study, output, given)
     read = read_study(study, settings)
+    known(names, read)
     problem = problem_of(read)
     picked = [one.name for one in chosen(problem, names)]
-    result = compare(problem, names, options, differences(read, picked), ticker)
-    ticker.done()
+    with Ticker(given["quiet"]) as ticker:
+        result = compare(problem, names, options, differences(read, picked), ticker)
     texts = {
         "json": lambda: to_json(comparison_content(result)),
         "csv": lambda: assessment_csv(result.assessment),
         "text": lambda: comparison_text(result, *screen(output)),
     }
     draw_figures(problem, result.assessment, result.assessment.question, given)
-    emit(texts[kind](), output)
+    emit(texts[kind](), output, "json" if kind == "json" else "")
     return code_of([one.chance.value for one in result.assessment.scenarios], given["fail_under"])

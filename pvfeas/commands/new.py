@@ -17,7 +17,9 @@ def command(technique: str, output: str) -> int:
 
     from pvfeas.starters import starter
 
-    if output != "-" and Path(output).exists():
+    if not output:
+        raise UsageError("--output: no file is named")
+    if output != "-" and (Path(output).is_file() or Path(output).is_dir()):
         raise UsageError(f"{output} is there already; nothing was written")
     emit(starter(technique), output)
     return 0

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -12,25 +12,52 @@ from pvfeas.results import SCHEMA_VERSION
 Schema = dict[str, Any]
 DIALECT = "https://json-schema.org/draft/2020-12/schema"
 QUANTILES = ("q05", "q16", "q50", "q84", "q95")
-TEXT: Schema = {"type": "string"}
-NUMBER: Schema = {"type": "number"}
-MAYBE: Schema = {"type": ["number", "null"]}
-PROBABILITY: Schema = {"type": "number", "minimum": 0, "maximum": 1}
+CLASSES = ("statistics", "reference", "systematics", "supply")
+PER_CALCULATION = "if only that calculation is right; none where there are no rival calculations"
 
 
-def said(schema: Schema, description: str) -> Schema:
-    """A schema with its meaning."""
-    return {"description": description, **schema}
+def text(description: str, **more: Any) -> Schema:
+    """A text."""
+    return {"description": description, "type": "string", **more}
 
 
-def table(description: str, properties: Mapping[str, Schema], *optional: str) -> Schema:
+def number(description: str, **more: Any) -> Schema:
+    """A number that is always there."""
+    return {"description": description, "type": "number", **more}
+
+
+def maybe(description: str) -> Schema:
+    """A number, or null."""
+    return {"description": description, "type": ["number", "null"]}
+
+
+def positive(description: str) -> Schema:
+    """A number that cannot be negative."""
+    return number(description, minimum=0)
+
+
+def probability(description: str) -> Schema:
+    """A probability or a share."""
+    return number(description, minimum=0, maximum=1)
+
+
+def count(description: str, least: int = 1) -> Schema:
+    """A whole number."""
+    return {"description": description, "type": "integer", "minimum": least}
+
+
+def truth(description: str) -> Schema:
+    """Yes or no."""
+    return {"description": description, "type": "boolean"}
+
+
+def table(description: str, properties: Mapping[str, Schema], optional: Collection[str] = ()) -> Schema:
     """An object with these keys and no others, all required but the optional ones."""
-    required = [name for name in properties if name not in optional]
     return {
         "description": description,
         "type": "object",
         "properties": dict(properties),
-        "required": required,
+        "required": [name for name in properties if name not in optional],
         "additionalProperties": False,
     }
 
@@ -52,185 +79,284 @@ def nullable(schema: Schema) -> Schema:
 
 def unit(*units: str) -> Schema:
     """The unit of the numbers beside it."""
-    return {"enum": list(units)}
+    return {"description": f"unit of the numbers beside it: {' or '.join(units)}", "enum": list(units)}
 
 
-MOMENT = table("a wall time", {"value": NUMBER, "unit": unit("s"), "clock": {"const": "wall"}})
-ERRORS = mapping(MAYBE, "95 % half-widths of the numerical integration, in the unit of the number of that name")
+def clock(name: str) -> Schema:
+    """Which clock a time is read from."""
+    meaning = {"wall": "calendar time", "live": "whole cycles on either enantiomer"}[name]
+    return {"description": f"the clock of this time: {meaning}", "const": name}
 
 
-def quantiles(description: str, *units: str) -> Schema:
-    """The distribution of a quantity over the draws."""
-    numbers = {name: said(MAYBE, f"{name[1:]} % quantile over the draws; null: never reached") for name in QUANTILES}
-    nominal = said(MAYBE, "with every input at its median")
-    return table(description, {"unit": unit(*units), **numbers, "nominal": nominal, "error": ERRORS})
+def moment(description: str) -> Schema:
+    """A wall time."""
+    return table(description, {"value": positive("the time, s"), "unit": unit("s"), "clock": clock("wall")})
 
 
-def required_time(description: str, clock: str) -> Schema:
+def errors(unit_name: str, null: bool, more: Mapping[str, Schema] | None = None) -> Schema:
+    """95 % half-widths; a quantile that is null has none. null: the replicates may disagree on whether it is finite."""
+    make = maybe if null else positive
+    unknown = "; null: not known, infinite in some replicates" if null else ""
+    named = {name: make(f"of the {name[1:]} % quantile, {unit_name}{unknown}") for name in QUANTILES}
+    told = "95 % half-widths of the numerical integration; absent for a quantile that is null"
+    return table(told, {**named, **(more or {})}, QUANTILES if null else ())
+
+
+def quantiles(description: str, *units: str, null: str = "") -> Schema:
+    """The distribution of a quantity over the draws. null: what a null means, where it can occur."""
+    named, end = " or ".join(units), f"; null: {null}" if null else ""
+    make = maybe if null else number
+    return table(
+        description,
+        {
+            "unit": unit(*units),
+            **{name: make(f"{int(name[1:])} % quantile over the draws, {named}{end}") for name in QUANTILES},
+            "nominal": make(f"value with every input at its median, {named}{end}"),
+            "error": errors(named, bool(null)),
+        },
+    )
+
+
+def required_time(description: str, name: str) -> Schema:
     """A required time."""
-    schema = quantiles(description, "s")
+    schema = quantiles(description, "s", null="never")
+    half_width = "95 % half-width of that probability"
     schema["properties"] |= {
-        "clock": {"const": clock},
-        "reachable": said(PROBABILITY, "probability that the goal can ever be reached"),
-        "in_time": said(PROBABILITY, "probability that the required time is within the budget"),
-        "per_calculation": mapping(MAYBE, "median if only that calculation is right"),
+        "clock": clock(name),
+        "error": errors("s", True, {"reachable": positive(half_width), "in_time": positive(half_width)}),
+        "reachable": probability("probability that the goal can ever be reached"),
+        "in_time": probability("probability that the required time is within the budget"),
+        "per_calculation": mapping(maybe("median, s; null: never"), f"median required time, s, {PER_CALCULATION}"),
     }
+    if name == "live":
+        schema["properties"]["per_calculation"] = table("empty: medians are given in wall time only", {})
     schema["required"] = list(schema["properties"])
     return schema
 
 
-def level(description: str, *units: str) -> Schema:
-    """Median over the draws and nominal value."""
-    numbers = {"q50": MAYBE, "nominal": MAYBE}
-    return table(description, {"unit": unit(*units), **numbers} if units else numbers)
+def level(description: str, unit_name: str, stated: bool = False) -> Schema:
+    """Median over the draws and nominal value. stated: with the unit beside them."""
+    numbers = {
+        "q50": positive(f"median over the draws, {unit_name}"),
+        "nominal": positive(f"value with every input at its median, {unit_name}"),
+    }
+    return table(description, {"unit": unit(unit_name), **numbers} if stated else numbers)
 
 
 def chance() -> Schema:
     """The chance and everything around it."""
-    at = table("chance at one of the times asked for", {"within": MOMENT, "value": PROBABILITY, "error": NUMBER})
+    error = positive("95 % half-width of the numerical integration of the chance")
+    at = table(
+        "chance at one of the times asked for",
+        {"within": moment("the time asked for"), "value": probability("chance within that time"), "error": error},
+    )
     return table(
         "probability of meeting the goal, averaged over the inputs",
         {
-            "within": said(MOMENT, "the budget"),
-            "value": said(PROBABILITY, "chance within the budget"),
-            "error": said(NUMBER, "95 % half-width of the numerical integration"),
-            "ceiling": said(PROBABILITY, "chance for unlimited wall time, the sample supply still counting"),
-            "nominal": said(PROBABILITY, "with every input at its median"),
-            "goal_met": said({"type": ["boolean", "null"]}, "chance at least the power; null where none was asked"),
-            "per_calculation": mapping(PROBABILITY, "chance if only that calculation is right"),
-            "at_each": listed(at, "chance at each time of a list of budgets"),
+            "within": moment("the budget, the longest of the times asked for"),
+            "value": probability("chance within the budget"),
+            "error": error,
+            "ceiling": probability("chance for unlimited wall time, the sample supply still counting"),
+            "nominal": probability("chance with every input at its median"),
+            "goal_met": {
+                "description": "whether the chance is at least the power; null where no power was asked",
+                "type": ["boolean", "null"],
+            },
+            "per_calculation": mapping(probability("chance within the budget"), f"chance {PER_CALCULATION}"),
+            "at_each": listed(at, "chance at each time of a list of budgets; empty for a single budget"),
         },
     )
 
 
 def sigma() -> Schema:
     """sigma in parts."""
-    part = level("median and nominal value, in the unit of sigma")
+    own = "in the unit of sigma"
     return table(
         "standard uncertainty of the splitting seen at the budget",
         {
-            "at": MOMENT,
+            "at": moment("the budget"),
             "unit": unit("Hz", "1"),
-            "total": part,
-            "statistical": part,
-            "reference": part,
-            "systematic": part,
-            "shares": mapping(PROBABILITY, "nominal parts of sigma squared"),
+            "total": level("sigma", own),
+            "statistical": level("the part of counting noise", own),
+            "reference": level("the part of the frequency noise of the probe", own),
+            "systematic": level("the part of all systematics", own),
+            "shares": mapping(probability("share of sigma squared"), "nominal shares of sigma squared, summing to 1"),
         },
     )
 
 
 def contract() -> Schema:
     """The decision contract."""
-    count = {"type": "integer", "minimum": 1}
+    claims = "null for goals that claim nothing"
     return table(
-        "what the word chance rests on",
+        "the decision contract: what the word chance rests on",
         {
-            "null": TEXT,
-            "threshold": said(MAYBE, "sigma, as asked"),
-            "threshold_used": said(MAYBE, "sigma, raised for trials and looks"),
-            "p": said(MAYBE, "false-claim probability of the threshold"),
-            "sides": count,
-            "trials": count,
-            "looks": count,
-            "power": MAYBE,
-            "confidence": MAYBE,
-            "construction": {"type": ["string", "null"]},
-            "drawn": TEXT,
-            "unknown_after": TEXT,
-            "floor_declared": {"type": "boolean"},
-            "schedule_declared": {"type": "boolean"},
+            "null": text("the null hypothesis in words"),
+            "threshold": maybe(f"significance asked for, sigma; {claims}"),
+            "threshold_used": maybe(f"threshold raised for trials and looks, sigma; {claims}"),
+            "p": maybe(f"false-claim probability of the threshold asked for; {claims}"),
+            "sides": {"description": "sides of the test", "enum": [1, 2]},
+            "trials": count("number of independent claims that share the false-claim probability"),
+            "looks": count("number of looks at the data"),
+            "power": maybe("chance asked for; null where none was"),
+            "confidence": maybe("confidence level of the limit asked for; null for goals other than exclude"),
+            "construction": {
+                "description": "how the limit asked for is constructed; null for goals other than exclude",
+                "type": ["string", "null"],
+            },
+            "drawn": text("what is drawn, in words"),
+            "unknown_after": text("what stays unknown after the measurement, in words"),
+            "floor_declared": truth("whether any systematic is declared"),
+            "schedule_declared": truth("whether a schedule is declared"),
         },
     )
 
 
 def significance() -> Schema:
     """|splitting seen| over sigma."""
-    numbers = dict.fromkeys(("q16", "q50", "q84", "nominal"), MAYBE)
-    left = said(MAYBE, "what not knowing the systematics well leaves, sigma")
-    return table("splitting seen over sigma at the budget, sigma", {"at": MOMENT, **numbers, "surviving": left})
+    numbers = {name: positive(f"{int(name[1:])} % quantile over the draws, sigma") for name in ("q16", "q50", "q84")}
+    return table(
+        "size of the splitting seen over sigma at the budget",
+        {
+            "at": moment("the budget"),
+            **numbers,
+            "nominal": positive("value with every input at its median, sigma"),
+            "surviving": positive("what not knowing the systematics well leaves of the median, sigma"),
+        },
+    )
 
 
 def resolution() -> Schema:
     """What must be resolved."""
     return table(
-        "sigma that the goal needs",
+        "sigma that the goal needs at the budget",
         {
-            "needed": level("sigma of the splitting", "Hz"),
-            "needed_centre": level("sigma of one line centre", "Hz"),
-            "of_frequency": nullable(level("needed sigma of the splitting over the line's frequency")),
-            "of_fwhm": nullable(level("needed sigma of the splitting over the interrogation width")),
+            "needed": level("needed sigma of the splitting seen", "Hz", stated=True),
+            "needed_centre": level("needed sigma of one line centre", "Hz", stated=True),
+            "of_frequency": nullable(
+                level("needed sigma of the splitting over the line's frequency; null where none is given", "no unit")
+            ),
+            "of_fwhm": nullable(
+                level("needed sigma of the splitting over the interrogation FWHM; null where there is none", "no unit")
+            ),
         },
     )
+
+
+def linear() -> Schema:
+    """The linear law of propagation."""
+    null = "null where the nominal study never meets the goal"
+    time = table(
+        "required wall time by the linear law",
+        {
+            "unit": unit("s"),
+            "value": maybe(f"required time with every input at its median, s; {null}"),
+            "u_ln": maybe(f"standard uncertainty of the natural logarithm of the required time; {null}"),
+        },
+    )
+    adequate = {
+        "description": f"whether the linear law agrees with the draws; {null}",
+        "type": ["boolean", "null"],
+    }
+    return table("the linear law of propagation on ln t, for comparison", {"required_time": time, "adequate": adequate})
 
 
 def scenario() -> Schema:
     """Everything about one scenario."""
     limit = table(
-        "median planned limit on |splitting| if there is no splitting",
-        {"unit": unit("Hz"), "confidence": PROBABILITY, "construction": TEXT, "q50": MAYBE},
-    )
-    linear = table(
-        "the linear law of propagation on ln t",
+        "median planned limit on the size of the true splitting at the budget if there is no splitting",
         {
-            "required_time": table("value, and u(ln t)", {"unit": unit("s"), "value": MAYBE, "u_ln": MAYBE}),
-            "adequate": {"type": ["boolean", "null"]},
+            "unit": unit("Hz"),
+            "confidence": probability("confidence level of the limit"),
+            "construction": text("how the limit is constructed"),
+            "q50": maybe("median limit, Hz; null where no measurement is ready within the budget in half of the draws"),
         },
-    )  # fmt: skip
+    )
+    shares = {name: probability(f"share of the draws limited by {name}") for name in CLASSES}
     limiting = table(
         "which class of uncertainty limits at the budget",
         {
-            "name": {"enum": ["statistics", "reference", "systematics", "supply"]},
-            "shares": mapping(PROBABILITY, "shares of the draws"),
+            "name": {"description": "the class that limits most draws", "enum": list(CLASSES)},
+            "shares": table("shares of the draws, summing to 1", shares),
         },
     )
+    centre = quantiles("uncertainty of the line centre of one enantiomer after one cycle; null: not applicable", "Hz")
+    sensitivity = quantiles("sigma times the root of live time, no systematics; null: not applicable", "Hz s^0.5")
     return table(
-        "one scenario",
+        "everything about one scenario",
         {
-            "name": TEXT,
-            "technique": TEXT,
+            "name": text("name of the scenario"),
+            "technique": text("kind of the technique"),
             "splitting": quantiles("true splitting, signed", "Hz"),
-            "signal": quantiles("splitting seen, on the technique's scale", "Hz", "1"),
-            "centre_uncertainty": nullable(quantiles("line centre of one enantiomer after one cycle", "Hz")),
-            "sensitivity": nullable(quantiles("sigma times the root of live time, no systematics", "Hz s^0.5")),
-            "required_time": required_time("time after which the goal is met", "wall"),
-            "required_live_time": required_time("the same in live time", "live"),
+            "signal": quantiles("splitting seen, signed, on the technique's scale", "Hz", "1"),
+            "centre_uncertainty": nullable(centre),
+            "sensitivity": nullable(sensitivity),
+            "required_time": required_time("wall time after which the goal is met", "wall"),
+            "required_live_time": required_time("live time after which the goal is met", "live"),
             "chance": chance(),
-            "significance": nullable(significance()),
+            "significance": significance(),
             "sigma": sigma(),
-            "resolution": nullable(resolution()),
-            "reach": quantiles("smallest true splitting that meets the goal within the budget", "Hz"),
-            "limit": nullable(limit),
-            "linear": linear,
+            "resolution": resolution(),
+            "reach": quantiles(
+                "smallest true splitting that meets the goal within the budget", "Hz", null="no splitting does"
+            ),
+            "limit": limit,
+            "linear": linear(),
             "contract": contract(),
             "limiting": limiting,
-            "status": {"enum": ["reachable", "unreachable"]},
-            "reason": TEXT,
-            "not_applicable": listed(TEXT, "what the technique does not have"),
+            "status": {
+                "description": "reachable where the median required time is finite",
+                "enum": ["reachable", "unreachable"],
+            },
+            "reason": text("why, in words, with the nearest change that cures an unreachable goal"),
+            "not_applicable": listed(text("name of a key that is null"), "what the technique does not have"),
+        },
+    )
+
+
+def question(name: str) -> Schema:
+    """The question and the options that change numbers."""
+    return table(
+        "the question and the options that change numbers",
+        {
+            "name": {"description": "the question", "const": name},
+            "scenarios": listed(text("name of a scenario"), "the scenarios asked for, in the order of the answer"),
+            "seed": count("seed of the points", 0),
+            "tolerance": number("scale of the numerical tolerances", exclusiveMinimum=0),
+            "method": {"description": "how inputs are drawn", "enum": ["lattice", "monte-carlo"]},
+            "maximum_points": count("most points per replicate"),
         },
     )
 
 
 def assess_schema() -> Schema:
     """The answer of assess."""
-    warning = table("a doubt", {"code": TEXT, "address": TEXT, "message": TEXT})
-    question = {
-        "description": "the question and the options that change numbers",
-        "type": "object",
-        "properties": {"name": TEXT},
-        "required": ["name"],
-    }
+    warning = table(
+        "a doubt",
+        {
+            "code": text("what kind of doubt"),
+            "address": text("the input or table it is about; empty where it is about the whole"),
+            "message": text("the doubt in words"),
+        },
+    )
+    study = table(
+        "the study",
+        {
+            "title": text("title of the study; empty where it has none"),
+            "sha256": text("SHA-256 of the resolved study", pattern="^[0-9a-f]{64}$"),
+        },
+    )
     schema = table(
         "the answer of pvfeas assess",
         {
-            "schema_version": {"const": SCHEMA_VERSION},
-            "pvfeas": said(TEXT, "version"),
-            "question": question,
-            "study": table("the study", {"title": TEXT, "sha256": {"type": "string", "pattern": "^[0-9a-f]{64}$"}}),
-            "seed": {"type": "integer"},
-            "points": said({"type": "integer"}, "points of the largest sample used"),
-            "method": {"enum": ["lattice", "monte-carlo"]},
-            "tolerance_met": {"type": "boolean"},
+            "schema_version": {"description": "version of this schema", "const": SCHEMA_VERSION},
+            "pvfeas": text("version of pvfeas"),
+            "question": question("assess"),
+            "study": study,
+            "seed": count("seed of the points", 0),
+            "points": count("points of the largest sample used"),
+            "method": {"description": "how inputs were drawn", "enum": ["lattice", "monte-carlo"]},
+            "tolerance_met": truth("whether every number met its tolerance"),
             "warnings": listed(warning, "doubts that travel with the answer"),
             "scenarios": listed(scenario(), "one entry a scenario, in the order asked for"),
         },
@@ -241,23 +367,33 @@ def assess_schema() -> Schema:
 def compare_schema() -> Schema:
     """The answer of compare: that of assess, what differs, and the odds."""
     schema = assess_schema()
-    difference = table("one thing written differently", {"key": TEXT, "texts": mapping(TEXT, "text per scenario")})
-    odds = table(
-        "which of two scenarios needs less wall time",
+    difference = table(
+        "one thing written differently",
         {
-            "first": TEXT,
-            "second": TEXT,
-            "first_sooner": PROBABILITY,
-            "second_sooner": PROBABILITY,
-            "neither": said(PROBABILITY, "both unreachable"),
-            "error": NUMBER,
-            "nominal_ratio": said(MAYBE, "required time of the second over that of the first, nominal"),
+            "key": text("address without the scenario"),
+            "texts": mapping(text("text as written; - where nothing is"), "text of each scenario"),
+        },
+    )
+    odds = table(
+        "which of two scenarios needs less wall time, drawn together",
+        {
+            "first": text("name of a scenario"),
+            "second": text("name of another scenario"),
+            "first_sooner": probability("probability that the first needs less wall time"),
+            "second_sooner": probability("probability that the second needs less wall time"),
+            "neither": probability("probability that both never meet the goal"),
+            "error": positive("largest 95 % half-width of the three probabilities"),
+            "nominal_ratio": maybe(
+                "required time of the second over that of the first, inputs at their medians, no unit; "
+                "null where one is infinite"
+            ),
         },
     )
     schema["title"], schema["description"] = "pvfeas compare", "the answer of pvfeas compare"
     schema["properties"] |= {
-        "differences": listed(difference, "what the scenarios do not share"),
-        "odds": listed(odds, "every pair"),
+        "question": question("compare"),
+        "differences": listed(difference, "what the scenarios write differently"),
+        "odds": listed(odds, "every pair of scenarios"),
     }
     schema["required"] += ["differences", "odds"]
     return schema
@@ -268,10 +404,10 @@ FILES = {"assess.schema.json": assess_schema, "compare.schema.json": compare_sch
 
 def answer_schema_text(name: str) -> str:
     """The schema as the file holds it."""
-    return json.dumps(FILES[name](), indent=2, ensure_ascii=False) + "\n"
+    return json.dumps(FILES[name](), indent=1, ensure_ascii=False, allow_nan=False) + "\n"
 
 
 def write_answer_schemas(folder: Path) -> None:
     """Write both files into a folder."""
     for name in FILES:
-        (folder / name).write_text(answer_schema_text(name), encoding="utf-8")
+        (folder / name).write_text(answer_schema_text(name), encoding="utf-8", newline="\n")

@@ -9,9 +9,11 @@ from typing import Any
 
 from pvfeas.output.json import plain, scenario_content
 from pvfeas.output.provenance import columns
+from pvfeas.output.words import spelt_out
 from pvfeas.results import Assessment, ChanceCurve, Curves, SigmaCurve
 
 PURE = ("reachable", "in_time", "shares", "u_ln", "confidence")  # numbers without a unit beside numbers with one
+NAMED = ("per_calculation", "shares")  # tables whose keys are names that somebody chose
 Row = Mapping[str, Any]
 
 
@@ -31,7 +33,10 @@ def _flat(content: Mapping[str, Any], path: str, unit: str) -> Iterator[tuple[st
     unit = str(content.get("unit", unit))
     for key, value in content.items():
         address = f"{path}.{key}" if path else key
-        if isinstance(value, Mapping):
+        if key in NAMED:
+            told = f" ({unit})" if unit not in ("", "1") and key not in PURE else ""
+            yield from ((f"{address}.{name}{told}", number) for name, number in value.items())
+        elif isinstance(value, Mapping):
             yield from _flat(value, address, "" if key in PURE else unit)
         elif key == "unit":
             continue
@@ -101,9 +106,11 @@ def to_csv(rows: Sequence[Row], told: Mapping[str, str] | None = None) -> str:
     alike = dict(told or {})
     names = list(dict.fromkeys(key for row in rows for key in row))
     stream = io.StringIO()
-    writer = csv.DictWriter(stream, [*names, *alike], lineterminator="\n", restval="")
-    writer.writeheader()
-    writer.writerows({key: _cell(value) for key, value in {**row, **alike}.items()} for row in rows)
+    writer = csv.writer(stream, lineterminator="\n")
+    writer.writerow([spelt_out(name) for name in (*names, *alike)])
+    for row in rows:
+        whole = {**row, **alike}
+        writer.writerow([_cell(whole.get(name)) for name in (*names, *alike)])
     return stream.getvalue()
 
 
@@ -113,4 +120,6 @@ def _cell(value: Any) -> Any:
         return ""
     if isinstance(value, bool):
         return "true" if value else "false"
+    if isinstance(value, str):
+        return spelt_out(value)
     return f"{value:.9g}" if isinstance(value, float) else value

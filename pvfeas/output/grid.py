@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import io
+import re
 from collections.abc import Sequence
 
 GAP = 3  # blanks between columns
@@ -10,7 +11,11 @@ Cells = Sequence[str]
 
 
 def grid(header: Cells, rows: Sequence[Cells], width: int, colour: bool = False) -> str:
-    """A table; where it is wider than width, several below each other that repeat the first column."""
+    """A table; where it is wider than width, several below each other that repeat the first column.
+
+    A cell too long for a table of two columns is folded, never cut.
+    """
+    header, rows = _folded(header, rows, width)
     return "\n\n".join(
         _table([header[i] for i in picked], [[row[i] for i in picked] for row in rows], colour)
         for picked in _columns(header, rows, width)
@@ -22,10 +27,45 @@ def fits(header: Cells, rows: Sequence[Cells], width: int) -> bool:
     return len(_columns(header, rows, width)) == 1 and _wide(header, rows) <= width
 
 
-def _widths(header: Cells, rows: Sequence[Cells]) -> list[int]:
+def _folded(header: Cells, rows: Sequence[Cells], width: int) -> tuple[Cells, Sequence[Cells]]:
+    """The first column at most half of the width, the others what it leaves to one of them."""
+    first = max(map(_long, (row[0] for row in (header, *rows))))
+    own = min(first, width // 2)
+    rest = max(width - own - GAP, 1)
+
+    def cells(row: Cells) -> list[str]:
+        return [fold(cell, rest) if place else fold(cell, own, 2) for place, cell in enumerate(row)]
+
+    return cells(header), [cells(row) for row in rows]
+
+
+def fold(text: str, size: int, hanging: int = 0) -> str:
+    """A text in lines of at most size columns, broken after a blank or a sign where there is one."""
+    if _long(text) <= size:
+        return text
+    margin = " " * min(len(text) - len(text.lstrip()) + hanging, size // 2)  # of the lines below the first
+    lines, here = [], ""
+    for piece in re.findall(r"\s*[^\s_.:,-]*[_.:,-]*", text):
+        while _long(here + piece) > size:
+            if here.strip():
+                lines.append(here.rstrip())
+                here, piece = margin, piece.lstrip()
+                continue
+            end = next(end for end in range(len(piece), 0, -1) if end == 1 or _long(here + piece[:end]) <= size)
+            lines.append(here + piece[:end])
+            here, piece = margin, piece[end:]
+        here += piece
+    return "\n".join([*lines, here.rstrip()] if here.strip() else lines)
+
+
+def _long(text: str) -> int:
     from rich.cells import cell_len
 
-    return [max(cell_len(row[place]) for row in (header, *rows)) for place in range(len(header))]
+    return max(map(cell_len, text.split("\n")))
+
+
+def _widths(header: Cells, rows: Sequence[Cells]) -> list[int]:
+    return [max(_long(row[place]) for row in (header, *rows)) for place in range(len(header))]
 
 
 def _wide(header: Cells, rows: Sequence[Cells]) -> int:

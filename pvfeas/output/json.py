@@ -9,6 +9,7 @@ from dataclasses import fields, is_dataclass
 from typing import Any
 
 from pvfeas.output.provenance import version
+from pvfeas.output.words import escaped
 from pvfeas.results import (
     SCHEMA_VERSION,
     Assessment,
@@ -127,5 +128,5 @@ def comparison_content(result: Comparison) -> dict[str, Any]:
 
 
 def to_json(content: Mapping[str, Any]) -> str:
-    """The text of a JSON document; ValueError if something is not finite after all."""
-    return json.dumps(content, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    """The text of a JSON document, control characters escaped; ValueError if something is not finite after all."""
+    return escaped(json.dumps(content, indent=1, ensure_ascii=False, allow_nan=False), "utf-8", "json") + "\n"

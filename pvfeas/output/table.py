@@ -36,7 +36,9 @@ def understood_text(found: Understood, width: int = WIDTH, colour: bool = False)
     parts = [wrapped(found.title, text)] if found.title else []
     for one in found.rows:
         said = "; ".join(each for each in (one.law, one.status, f"source: {one.source}" if one.source else "") if each)
-        parts.append(f"{one.address} = {one.text}\n    {wrapped(said, max(text - 4, 20), '    ')}")
+        parts.append(
+            f"{wrapped(f'{one.address} = {one.text}', text, '  ')}\n    {wrapped(said, max(text - 4, 20), '    ')}"
+        )
     rows = "\n".join(parts[1:] if found.title else parts)
     parts = [*parts[: 1 if found.title else 0], rows, *(wrapped(one, text, "  ") for one in found.widths)]
     for name, listed in (
@@ -146,12 +148,15 @@ def _differences(names: Sequence[str], found: Sequence[Difference], width: int, 
     header, rows = ["", *names], [[one.key, *one.texts] for one in found]
     if fits(header, rows, width):
         return grid(header, rows, width, colour)
-    longest = max(len(name) for name in names)
+    longest, text_width = max(len(name) for name in names), min(width, MOST)
     listed = []
     for one in found:
         listed.append(one.key)
         for name, text in zip(names, one.texts, strict=True):
-            listed.append(wrapped(f"  {name.ljust(longest)}  {text}", min(width, MOST), " " * (longest + 4)))
+            if longest <= width // 3:
+                listed.append(wrapped(text, text_width, " " * (longest + 4), f"  {name.ljust(longest)}  "))
+            else:
+                listed += [f"  {name}", wrapped(text, text_width, " " * 6, " " * 6)]
     return "\n".join(listed)
 
 

@@ -29,28 +29,64 @@ def encodable(text: str, encoding: str) -> str:
 
 
 def _spelt(sign: str, encoding: str) -> str:
-    if sign.isascii():
+    if _carried(sign, encoding):
         return sign
+    plain = unicodedata.normalize("NFKD", sign).encode("ascii", "ignore").decode()
+    return ASCII.get(sign) or plain or "?"
+
+
+def _carried(sign: str, encoding: str) -> bool:
+    if sign.isascii():
+        return True
     try:
         sign.encode(encoding)
     except (UnicodeEncodeError, LookupError):
-        plain = unicodedata.normalize("NFKD", sign).encode("ascii", "ignore").decode()
-        return ASCII.get(sign) or plain or "?"
-    return sign
+        return False
+    return True
+
+
+def steers(sign: str) -> bool:
+    """Whether a character could steer a terminal or hide: controls, directions of writing, line separators."""
+    return sign != "\n" and unicodedata.category(sign) in ("Cc", "Cf", "Cs", "Zl", "Zp")
 
 
 def cleaned(text: str) -> str:
     """The text without control characters, which could steer a terminal."""
-    return "".join(
-        sign if sign == "\n" or unicodedata.category(sign) not in ("Cc", "Cf", "Cs") else "?" for sign in text
-    )
+    return "".join("?" if steers(sign) else sign for sign in text)
 
 
-def wrapped(text: str, width: int, hanging: str = "") -> str:
-    """A paragraph in lines of at most width, words kept whole."""
+def spelt_out(text: str) -> str:
+    """A text of one line with control characters as Python writes them, such as \\x1b."""
+    return "".join(repr(sign)[1:-1] if sign == "\n" or steers(sign) else sign for sign in text)
+
+
+def escaped(text: str, encoding: str, language: str) -> str:
+    """JSON or TOML ("json", "toml") that says the same without control characters and in what the encoding carries.
+
+    Such characters stand in strings and quoted keys only, where both languages know escapes.
+    """
+    found: dict[str, str | int | None] = {
+        sign: _escape(sign, language) for sign in set(text) if steers(sign) or not _carried(sign, encoding)
+    }
+    return text.translate(str.maketrans(found))
+
+
+def _escape(sign: str, language: str) -> str:
+    number = ord(sign)
+    if number <= 0xFFFF:
+        return f"\\u{number:04x}"
+    if language == "toml":
+        return f"\\U{number:08x}"
+    high, low = divmod(number - 0x10000, 0x400)  # JSON writes a pair of surrogates
+    return f"\\u{0xD800 + high:04x}\\u{0xDC00 + low:04x}"
+
+
+def wrapped(text: str, width: int, hanging: str = "", first: str = "") -> str:
+    """A paragraph in lines of at most width, words kept whole; first: what stands before the first line."""
     return textwrap.fill(
-        " ".join(text.split()), width, subsequent_indent=hanging, break_long_words=False, break_on_hyphens=False
-    )
+        " ".join(text.split()), width, initial_indent=first, subsequent_indent=hanging, break_long_words=False,
+        break_on_hyphens=False,
+    )  # fmt: skip
 
 
 def short(text: str) -> str:

@@ -13,11 +13,17 @@ from pvfeas.plots.style import SETTINGS
 FORMATS = (".pdf", ".svg", ".png")
 
 
-def figure_bytes(figure: Any, target: str, metadata: Mapping[str, str]) -> bytes:
-    """The figure in the format of the target's suffix. UsageError for another suffix."""
+def figure_suffix(target: str) -> str:
+    """The format that the suffix of a target names. UsageError for one that is not known."""
     suffix = Path(target).suffix.lower()
     if suffix not in FORMATS:
         raise UsageError(f"{target}: figures are written as {', '.join(FORMATS)}")
+    return suffix
+
+
+def figure_bytes(figure: Any, target: str, metadata: Mapping[str, str]) -> bytes:
+    """The figure in the format of the target's suffix. UsageError for another suffix."""
+    suffix = figure_suffix(target)
     from matplotlib import rc_context
 
     told: dict[str, Any] = dict(metadata)
