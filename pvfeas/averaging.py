@@ -87,6 +87,12 @@ class Averaging:
         """Whether both arms have been measured by then, before the sample ended."""
         return np.asarray(np.minimum(wall, self.last) >= self.first)
 
+    def margin(self, wall: Array) -> Array:
+        """ln of the time there is to average over the time that is needed at least; positive where usable."""
+        with np.errstate(divide="ignore"):
+            found = np.log(np.minimum(wall, self.last)) - np.log(self.first)
+        return np.asarray(np.nextafter(np.clip(found, -60.0, 60.0), np.inf))
+
     def parts(self, wall: Array) -> dict[str, Array]:
         """Variances by name: statistics, reference or reference.NAME, systematics.NAME or that of their group."""
         at = np.minimum(wall, self.last)

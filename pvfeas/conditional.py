@@ -34,8 +34,11 @@ FAR = 60.0  # logarithms differ by less wherever it matters
 class Pivot(Protocol):
     """How the signed signal is distributed at every point."""
 
-    def probability(self, intervals: Sequence[Interval]) -> Array:
-        """P(signal in the union of disjoint intervals): (times …, groups …, replicates, points)."""
+    def probability(self, intervals: Sequence[Interval], allowed: Array | None = None) -> Array:
+        """P(signal in the union of disjoint intervals): (times …, groups …, replicates, points).
+
+        allowed: a smooth number that must be positive too; None where nothing else is asked.
+        """
 
 
 @dataclass(frozen=True)
@@ -44,12 +47,12 @@ class NoPivot:
 
     signal: Array
 
-    def probability(self, intervals: Sequence[Interval]) -> Array:
+    def probability(self, intervals: Sequence[Interval], allowed: Array | None = None) -> Array:
         """1 where the signal lies in an interval, else 0."""
         inside: Array = np.zeros(())
         for lower, upper in intervals:
             inside = inside + ((self.signal > lower) & (self.signal < upper))
-        return np.asarray(inside, dtype=float)
+        return np.asarray(inside if allowed is None else inside * (allowed > 0), dtype=float)
 
 
 @dataclass(frozen=True)
@@ -76,12 +79,12 @@ class LawPivot:
             return LawPivot(kept(self.factor), self.laws, self.axis, location, self.width)
         return LawPivot(kept(self.factor), (self.laws[member],), 0, location, self.width)
 
-    def probability(self, intervals: Sequence[Interval]) -> Array:
+    def probability(self, intervals: Sequence[Interval], allowed: Array | None = None) -> Array:
         """Sum of the law's probabilities of the intervals divided by the factor."""
         total: Array = np.zeros(())
         for lower, upper in intervals:
             total = total + self._one(lower, upper)
-        return total
+        return total if allowed is None else np.asarray(np.where(allowed > 0, total, 0.0))
 
     @cached_property
     def _upright(self) -> bool:
@@ -144,45 +147,71 @@ class NodePivot:
     signal: Array
     axis: int
 
-    def probability(self, intervals: Sequence[Interval]) -> Array:
+    def probability(self, intervals: Sequence[Interval], allowed: Array | None = None) -> Array:
         """Normal probability of the scores at which the signal lies in an interval; the node axis is gone."""
         ends = [pair for low, high in intervals for pair in ((self.signal, low), (high, self.signal))]
         beyond = [np.asarray(greater > smaller) for greater, smaller in ends]
         inside: Booleans = np.zeros((), dtype=bool)
         for i in range(0, len(beyond), 2):
             inside = inside | (beyond[i] & beyond[i + 1])
+        inside = inside if allowed is None else inside & (allowed > 0)
 
         def margin(at: Index) -> Array:
-            found: Array = np.zeros(())
+            found: Array = np.asarray(FAR)
             for (greater, smaller), flags in zip(ends, beyond, strict=True):
                 flag = _at(flags, inside.shape, at)
                 crossed = flag[HERE] != flag[HERE + 1]  # this end is the one that is crossed
                 one = lead(_at(greater, inside.shape, at), _at(smaller, inside.shape, at))
                 found = np.where(crossed, one, found)
-            return found
+            return found if allowed is None else flipping([found, _at(allowed, inside.shape, at)])
 
         return along_nodes(inside, margin, self.axis)
 
 
 @dataclass(frozen=True)
 class NodeValues:
-    """A quantity that cannot be negative, infinity allowed, at NODES of one input's score along one axis."""
+    """A quantity that cannot be negative at NODES of one input's score along one axis.
+
+    allowed: a smooth number, not positive where the quantity is infinite.
+    """
 
     values: Array
     axis: int
+    allowed: Array | None = None
 
     def up_to(self, value: Array) -> Array:
         """P(quantity <= value) at every point; value has an axis of length 1 where the nodes are, which goes."""
         inside = np.asarray(self.values < value)
+        inside = inside if self.allowed is None else inside & (self.allowed > 0)
 
         def margin(at: Index) -> Array:
-            return lead(_at(value, inside.shape, at), _at(self.values, inside.shape, at))
+            found = lead(_at(value, inside.shape, at), _at(self.values, inside.shape, at))
+            return found if self.allowed is None else flipping([found, _at(self.allowed, inside.shape, at)])
 
         return along_nodes(inside, margin, self.axis)
 
 
 def _at(values: NDArray[Any], shape: tuple[int, ...], at: Index) -> NDArray[Any]:
     return np.asarray(np.broadcast_to(values, shape)[at])
+
+
+def flipping(margins: Sequence[Array]) -> Array:
+    """Of several margins at neighbouring nodes that must all be positive, the one that changes its sign there.
+
+    The least of those where several do; taking the least of all would bend it where another one is small.
+    """
+    found: Array = np.asarray(FAR)
+    for one in margins:
+        changes = (one[HERE] > 0) != (one[HERE + 1] > 0)
+        found = np.minimum(found, np.where(changes, one, FAR))
+    return found
+
+
+def all_positive(margins: Sequence[Array], axis: int) -> Array:
+    """Probability of the scores for which all margins, known at NODES along one axis, are positive."""
+    full = np.broadcast_arrays(*margins)
+    inside = np.all([one > 0 for one in full], axis=0)
+    return along_nodes(inside, lambda at: flipping([one[at] for one in full]), axis)
 
 
 def lead(first: Array, second: Array) -> Array:
@@ -253,7 +282,8 @@ def _hermite_root(here: Array, there: Array, left: Array, right: Array) -> Array
     low, high = np.zeros_like(here), np.ones_like(here)
     rising = there > here
     square, cube = 3.0 * (there - here) - 2.0 * left - right, 2.0 * (here - there) + left + right
-    fraction = here / (here - there)
+    flat = here == there  # rounding decided: anywhere between the two
+    fraction = np.where(flat, 0.5, here / np.where(flat, 1.0, here - there))
     for _ in range(6):
         value = here + fraction * (left + fraction * (square + fraction * cube))
         slope = left + fraction * (2.0 * square + 3.0 * fraction * cube)

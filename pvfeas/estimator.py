@@ -14,10 +14,11 @@ import numpy as np
 from scipy import special
 
 from pvfeas.conditional import Interval, LawPivot, Pivot
-from pvfeas.decision import Rule, needed_signal, signal_intervals
+from pvfeas.decision import Rule, signal_intervals
 from pvfeas.laws import Array
 from pvfeas.points import Sample
 from pvfeas.realisation import Realisation
+from pvfeas.required import raw_needed
 
 STRATA = 8  # of the noise: errors of a chance become 2 to 6 times smaller (measured on the example studies)
 Select = Callable[[Array], Array]
@@ -57,11 +58,8 @@ class Estimator:
         )  # fmt: skip
 
     def needed(self, wall: Array) -> Array:
-        """The smallest signal that meets the goal by wall time; infinite before the first usable time."""
-        real = self.realisation
-        sigma = np.sqrt(real.averaging.best_variance(wall))
-        needed = needed_signal(self.rule, sigma, sigma, real.relative_variance(wall))
-        return np.asarray(np.where(real.averaging.usable(wall), needed, np.inf))
+        """The smallest signal that meets the goal by wall time, whether the time is usable yet or not."""
+        return raw_needed(self.realisation, self.rule, wall)
 
     def _beyond(self, least: Array) -> list[Interval]:
         """Intervals of the signed signal in which the goal's kind of signal is at least `least`."""
@@ -69,13 +67,15 @@ class Estimator:
 
     def met_by(self, wall: Array, select: Select | None = None) -> Array:
         """P(required wall time <= wall)."""
-        points = self.pivot.probability(self._beyond(self.needed(self._times(wall))))
+        points = self._met(self._times(wall))
         return (select or self.sample.average)(points)
 
     def met_by_live(self, live: Array) -> Array:
         """P(required live time <= live)."""
-        wall = self._times(live) / self.realisation.averaging.live_per_wall
-        return self._average(self._beyond(self.needed(wall)))
+        return self.sample.average(self._met(self._times(live) / self.realisation.averaging.live_per_wall))
+
+    def _met(self, wall: Array) -> Array:
+        return self.pivot.probability(self._beyond(self.needed(wall)), self.realisation.averaging.margin(wall))
 
     def chance_by(self, wall: Array, select: Select | None = None) -> Array:
         """Chance that the goal is met by wall time; select averages in another way than over everything."""
@@ -85,11 +85,11 @@ class Estimator:
         """Chance at every point, before averaging."""
         real, at = self.realisation, self._times(wall)
         sigma, relative = np.sqrt(real.averaging.best_variance(at)), real.relative_variance(at)
-        usable = real.averaging.usable(at)
+        usable = real.averaging.margin(at)
         total: Array = np.zeros(())
         for noise in self._strata():
             intervals = signal_intervals(self.rule, sigma, sigma, relative, noise)
-            total = total + self.pivot.probability(_only(intervals, usable)) / STRATA
+            total = total + self.pivot.probability(intervals, usable) / STRATA
         return total
 
     def _strata(self) -> list[Array]:
@@ -123,8 +123,3 @@ def beyond(rule: Rule, least: Array) -> list[Interval]:
     if not rule.one_signed:
         return [(least, infinite), (-infinite, -least)]
     return [(least, infinite)] if rule.predicted_sign > 0 else [(-infinite, -least)]
-
-
-def _only(intervals: tuple[Interval, ...] | list[Interval], usable: Array) -> list[Interval]:
-    """Empty the intervals where the time cannot be used yet."""
-    return [(np.where(usable, low, np.inf), np.where(usable, high, np.inf)) for low, high in intervals]

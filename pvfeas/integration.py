@@ -235,11 +235,24 @@ class Along:
         self._problem, self._scenario = problem, scenario
         self._known: dict[str, Realisation] = {}
 
-    def up_to(self, address: str, values: Callable[[Realisation], Array]) -> Callable[[Array], Array]:
-        """The distribution function of a quantity that cannot be negative, per replicate, one input integrated."""
+    def up_to(
+        self,
+        address: str,
+        values: Callable[[Realisation], Array],
+        allowed: Callable[[Realisation], Array] | None = None,
+    ) -> Callable[[Array], Array]:
+        """The distribution function of a quantity that cannot be negative, per replicate, one input integrated.
+
+        allowed: positive where the quantity is finite.
+        """
         if address not in self._known:
             self._known[address] = realise(self._scenario, draws_along(self._problem, self.sample, address))
         axes = 3 + len(self.sample.groups)
-        quantity = values(self._known[address])
-        found = NodeValues(quantity.reshape((1,) * (axes - quantity.ndim) + quantity.shape), node_axis(self.sample))
+
+        def full(made: Array) -> Array:
+            return made.reshape((1,) * (axes - made.ndim) + made.shape)
+
+        real = self._known[address]
+        margin = None if allowed is None else full(allowed(real))
+        found = NodeValues(full(values(real)), node_axis(self.sample), margin)
         return lambda value: self.sample.average(found.up_to(np.asarray(value).reshape((-1,) + (1,) * axes)))

@@ -12,11 +12,15 @@ from pvfeas.realisation import Realisation
 from pvfeas.roots import falling_root
 
 
+def raw_needed(real: Realisation, rule: Rule, wall: Array) -> Array:
+    """The smallest signal that meets the goal by wall time, whether the time is usable yet or not."""
+    sigma = np.sqrt(real.averaging.best_variance(wall))
+    return needed_signal(rule, sigma, sigma, real.relative_variance(wall))
+
+
 def needed_at(real: Realisation, rule: Rule, wall: Array) -> Array:
     """The smallest signal that meets the goal by wall time, infinite where the time is not usable yet."""
-    sigma = np.sqrt(real.averaging.best_variance(wall))
-    needed = needed_signal(rule, sigma, sigma, real.relative_variance(wall))
-    return np.asarray(np.where(real.averaging.usable(wall), needed, np.inf))
+    return np.asarray(np.where(real.averaging.usable(wall), raw_needed(real, rule, wall), np.inf))
 
 
 def counted(rule: Rule, signal: Array) -> Array:

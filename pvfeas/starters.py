@@ -50,9 +50,10 @@ CHILD = """\
 # without = ["systematics.line_shape"]
 """
 # The declarations' examples serve every technique; these fit one of them better.
-SIZES = {"ramsey": "0.15 Hz"}  # well inside a fringe of 2.5 Hz
+SIZES = {"ramsey": "0.15 Hz", "free-decay": "0.15 Hz"}  # well inside the interrogation width
 VALUES: Mapping[str, Mapping[str, str]] = {"ramsey": {"coherence_time": "1.5(3) s"}}
-CHANGES = {"quoted": 'uncertainty = "0.3 Hz ×/ 1.5"', "ramsey": 'free_time = "0.5 s"', "scan": 'snr = "160 ×/ 1.5"'}
+CHANGES = {"quoted": 'uncertainty = "0.3 Hz ×/ 1.5"', "ramsey": 'free_time = "0.5 s"', "scan": 'snr = "160 ×/ 1.5"',
+    "two-point": 'snr = "160 ×/ 1.5"', "free-decay": 'snr = "10 ×/ 1.5"'}  # fmt: skip
 
 
 def starter(technique: str) -> str:

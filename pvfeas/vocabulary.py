@@ -23,7 +23,7 @@ LATER = "is planned for a later version of pvfeas"
 LATER_KEYS: dict[str, tuple[str, ...]] = {
     "scan": ("modulation",),
 }  # fmt: skip
-LATER_KINDS = ("two-point", "free-decay", "doublet", "parity-evolution")
+LATER_KINDS = ("doublet", "parity-evolution")
 LATER_CHOICES = {"detection": ("dispersion", "first-derivative", "1f", "2f", "3f")}
 
 

@@ -18,7 +18,7 @@ from pvfeas.tables import Line
 from pvfeas.techniques import Technique
 
 FWHM = 12e3  # Hz
-UNITS = {"": 1.0, "Hz": 1.0, "kHz": 1e3, "s": 1.0, "ms": 1e-3, "h": 3600.0, "1/s": 1.0, "FWHM": FWHM}
+UNITS = {"": 1.0, "Hz": 1.0, "kHz": 1e3, "s": 1.0, "ms": 1e-3, "µs": 1e-6, "h": 3600.0, "1/s": 1.0, "FWHM": FWHM}
 # How a quantity grows when every frequency is multiplied by lambda and every time divided by it.
 POWERS = {"Hz": 1, "s": -1, "1/s": 1, "1": 0}
 SHAPE = (4, 37)

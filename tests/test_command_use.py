@@ -164,7 +164,6 @@ def test_settings_that_are_wrong(said: Said, setting: str, words: str) -> None:
     assert "--set" in err or "study.toml:" in err
 
 
-@pytest.mark.xfail(reason="studyfile: a value of --set is not unwrapped there", strict=True)
 @pytest.mark.parametrize(
     "setting",
     [

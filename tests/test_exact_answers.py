@@ -9,6 +9,7 @@ from scipy import integrate, special, stats
 from pvfeas.compiler import problem_of
 from pvfeas.options import Options
 from pvfeas.questions.assess import assess
+from pvfeas.questions.compare import compare
 from pvfeas.results import ScenarioResult
 from pvfeas.studyfile import load_study
 
@@ -181,3 +182,46 @@ def test_systematic_floor_makes_a_share_unreachable() -> None:
     found = answer(study).required_time
     exact = special.ndtr(np.log(0.05 / ((5 + Z90) * 0.005)) / np.hypot(np.log(2.0), np.log(1.5)))
     assert abs(found.reachable - exact) <= 1.25 * (found.error["reachable"] or 0.0) + 1e-9
+
+
+@pytest.mark.parametrize("within", [3.0, 5.0])
+def test_reach_where_the_first_usable_time_is_uncertain(within: float) -> None:
+    """Infinite where two cycles do not fit: by quadrature over the free time, molecules in closed form.
+
+    1e-3: crossings interpolated between nodes; quantiles above P(usable) are null.
+    """
+    study = (
+        DETECT.replace("20 d", f"{within} s")
+        + '[scenario.x]\nsplitting = { value = "1 mHz ×/ 3", of = "difference" }\n'
+    )
+    study += 'technique = { kind = "ramsey", free_time = "1 s ×/ 1.5", contrast = 0.8, molecules = "1e3 ×/ 1.4" }\n'
+    last = np.log(within / 2.0) / np.log(1.5)
+
+    def reach(z: float) -> float:
+        free_time = 1.5**z
+        return float((5 + Z90) * 2.0 * np.sqrt(free_time / 4e3) / (np.pi * 0.8 * free_time) / np.sqrt(within))
+
+    def below(value: float) -> float:
+        def part(z: float) -> float:
+            return float(stats.norm.pdf(z) * special.ndtr(np.log(value / reach(z)) / (np.log(1.4) / 2.0)))
+
+        return float(integrate.quad(part, -9.0, last, epsabs=1e-13)[0])
+
+    found = answer(study, tolerance=0.3).reach
+    for name, p in PROBABILITIES.items():
+        value = getattr(found, name)
+        if p > special.ndtr(last):
+            assert value is None
+        else:
+            assert value is not None
+            assert below(value) == pytest.approx(p, abs=1e-3)
+
+
+def test_nothing_to_see_and_nothing_left() -> None:
+    """Both unreachable: a splitting of exactly zero, and a sample that ends before one cycle."""
+    base = DETECT.replace("20 d", "1 s") + '[scenario.zero]\nsplitting = { value = "0 Hz", of = "difference" }\n'
+    base += 'technique = { kind = "ramsey", free_time = "0.1 s", contrast = 0.8, molecules = "20 ×/ 1.5" }\n'
+    base += '[scenario.used_up]\nbased_on = "zero"\nsplitting = { value = "1 uHz ×/ 2", of = "difference" }\n'
+    base += 'samples = { mass = "1 mg", consumption = "5 kg/h" }\n'
+    odds = compare(problem_of(load_study(base))).odds[0]
+    assert (odds.first_sooner, odds.second_sooner, odds.neither) == (0.0, 0.0, 1.0)

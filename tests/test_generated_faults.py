@@ -21,6 +21,14 @@ PARTS: dict[str, type] = {"line": Line, "switching": Switching, "samples": Sampl
 TECHNIQUE: dict[str, dict[str, Any]] = {
     "quoted": {"kind": "quoted", "uncertainty": "0.5 Hz ×/ 1.3", "after": "1 h", "of": "one enantiomer"},
     "ramsey": {"kind": "ramsey", "free_time": "10 ms", "contrast": "0.6(1)", "molecules": "400 ×/ 1.5"},
+    "two-point": {"kind": "two-point", "snr": "80 ×/ 1.3", "time": "0.2 s"},
+    "free-decay": {
+        "kind": "free-decay",
+        "decay_time": "40(5) ms",
+        "record": "80 ms",
+        "snr": "5 ×/ 1.3",
+        "sample_interval": "10 µs",
+    },
     "scan": {"kind": "scan", "snr": "80 ×/ 1.3", "points": 60, "span": "50 kHz", "time": "2 s"},
 }
 SHOT = {"kind": "scan", "noise": "shot", "counts": "900 ×/ 1.2", "points": 60, "span": "50 kHz", "time": "2 s"}
@@ -47,6 +55,10 @@ def good(table: str, kind: str, key: str) -> Tables:
     technique = TECHNIQUE[kind]
     if kind == "scan" and key in ("counts", "background"):
         technique = SHOT
+    if kind == "two-point" and key in ("counts", "background"):
+        technique = {"kind": "two-point", "noise": "shot", "counts": "900 ×/ 1.2", "time": "0.2 s"}
+    if kind == "two-point" and key in ("molecules", "contrast"):
+        technique = {"kind": "two-point", "noise": "projection", "molecules": "900 ×/ 1.2", "time": "0.2 s"}
     if key == "rate" and table == "technique":
         technique = {name: value for name, value in technique.items() if name != "molecules"} | {"rate": "80 1/s"}
     line = {"frequency": "29.1 THz", "fwhm": "12(2) kHz"}

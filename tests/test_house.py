@@ -22,7 +22,7 @@ NUMBER_HALF = (
     ("techniques", "centre_bounds", "limits", "systematics", "schedule"),
     ("problem", "reference", "averaging", "decision"),
     ("points", "conditional", "quantiles", "nominal", "roots", "summaries"),
-    ("realisation", "estimator", "linear", "monte_carlo", "required", "integration"),
+    ("realisation", "required", "estimator", "linear", "monte_carlo", "integration"),
     ("questions",),
 )
 TEXT_LIBRARIES = {"pydantic", "pint"}

@@ -50,7 +50,7 @@ def switched_on(text: str, number: int) -> str:
 ELSEWHERE = {
     "limit": "exclude", "relative_uncertainty": "measure", "hwhm": "fwhm",
     "rate": "molecules|white", "counts": "shot", "background": "shot", "every": "per reset", "after": "as 1/t",
-    "rejection": "simultaneous", "h": "allan", "table": "white",
+    "rejection": "simultaneous", "molecules": "projection", "contrast": "projection", "h": "allan", "table": "white",
 }  # fmt: skip
 
 

@@ -8,7 +8,7 @@ from itertools import combinations
 
 import numpy as np
 
-from pvfeas.conditional import FAR, Booleans, along_nodes
+from pvfeas.conditional import FAR, all_positive
 from pvfeas.errors import UsageError
 from pvfeas.integration import draws_along, node_axis
 from pvfeas.laws import Array
@@ -20,7 +20,7 @@ from pvfeas.questions.assess import Progress, assess
 from pvfeas.questions.planning import Plan, Sampling, chosen, samplings
 from pvfeas.questions.tolerance import PROBABILITY
 from pvfeas.realisation import Realisation, realise
-from pvfeas.required import counted, needed_at, required_wall_time
+from pvfeas.required import counted, raw_needed, required_wall_time
 from pvfeas.results import Assessment, Comparison, Difference, Odds
 
 ENOUGH = 0.05  # of the variance of the ratio of the times
@@ -62,13 +62,14 @@ def _pair(sampling: Sampling, first: Plan, second: Plan) -> Odds:
     lead, other, address = _lead(first, second)
     if sampling.thin is None or not address:
         sample = sampling.full
-        points = [np.asarray(one, dtype=float) for one in _sooner_neither_same(lead, other, sample.draws)[0]]
+        margins = _sooner_neither_same(lead, other, sample.draws)
+        points = [
+            np.asarray(np.all([m > 0 for m in np.broadcast_arrays(*one)], axis=0), dtype=float) for one in margins
+        ]
     else:
         sample = sampling.thin
-        inside, margins = _sooner_neither_same(lead, other, draws_along(sampling.problem, sample, address))
-        points = [
-            along_nodes(one, margin.__getitem__, node_axis(sample)) for one, margin in zip(inside, margins, strict=True)
-        ]
+        margins = _sooner_neither_same(lead, other, draws_along(sampling.problem, sample, address))
+        points = [all_positive(one, node_axis(sample)) for one in margins]
     sooner, neither, same = (sample.average(one) for one in points)
     later = np.maximum(1.0 - sooner - neither - same, 0.0)
     nominal = [_number(_times(one, one.nominal.sampled, nominal_draws(one.problem.inputs))) for one in (first, second)]
@@ -108,8 +109,8 @@ def _times(planned: Plan, real: Realisation, draws: Draws) -> Array:
     return required_wall_time(real, planned.rule, real.factor * planned.target.at(draws))
 
 
-def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Booleans], list[Array]]:
-    """Whether, and how clearly, the lead is sooner, both are unreachable, both need the same time.
+def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> list[list[Array]]:
+    """Margins that are all positive where the lead is sooner, both are unreachable, both need the same time.
 
     The lead is sooner where its signal is more than it needs at the required time of the other, which
     may be infinite; this has no jump where a required time becomes infinite.
@@ -118,12 +119,18 @@ def _sooner_neither_same(lead: Plan, other: Plan, draws: Draws) -> tuple[list[Bo
     signal = {one: real[one].factor * one.target.at(draws) for one in (lead, other)}
     size = {one: counted(one.rule, signal[one]) for one in (lead, other)}
     at = required_wall_time(real[other], other.rule, signal[other])
-    ahead = more(size[lead], needed_at(real[lead], lead.rule, at))
-    lacking = [more(needed_at(real[one], one.rule, np.asarray(np.inf)), size[one]) for one in (lead, other)]
-    neither = np.minimum(*lacking)
-    same = np.where((np.abs(ahead) <= SAME) & np.isfinite(at), 1.0, -1.0)
-    margins = [np.asarray(one) for one in np.broadcast_arrays(np.where(same > 0, -SAME, ahead), neither, same)]
-    return [one > 0 for one in margins], margins
+    ahead, usable = more(size[lead], raw_needed(real[lead], lead.rule, at)), real[lead].averaging.margin(at)
+    same = np.where((np.abs(ahead) <= SAME) & (usable > 0) & np.isfinite(at), 1.0, -1.0)
+    lacking = [_lacking(real[one], one, size[one]) for one in (lead, other)]
+    shape = [np.zeros(np.broadcast_shapes(*(one.shape for one in (ahead, usable, same, *lacking)))) + 1.0]
+    return [[np.where(same > 0, -SAME, ahead), usable, *shape], [*lacking, *shape], [same, *shape]]
+
+
+def _lacking(real: Realisation, one: Plan, size: Array) -> Array:
+    """How clearly no time is enough: for want of signal, or of a sample that lasts for one cycle."""
+    forever = np.asarray(np.inf)
+    short = more(raw_needed(real, one.rule, forever), size)
+    return np.asarray(np.maximum(np.where(size <= 0, FAR, short), -real.averaging.margin(forever)))
 
 
 def more(first: Array, second: Array) -> Array:

@@ -14,7 +14,7 @@ from pvfeas.problem import Ensemble
 from pvfeas.quantiles import pooled, solve
 from pvfeas.questions.planning import Case
 from pvfeas.realisation import Realisation
-from pvfeas.required import counted, needed_at, required_wall_time
+from pvfeas.required import counted, raw_needed, required_wall_time
 from pvfeas.results import (
     Chance,
     Level,
@@ -39,14 +39,25 @@ def finite(value: float) -> float | None:
     return value if np.isfinite(value) else None
 
 
-def spread(case: Case, values: Callable[[Realisation], Array], unit: str) -> Quantiles:
-    """Quantiles of a quantity that cannot be negative, the input that matters most for it integrated."""
+def spread(
+    case: Case, values: Callable[[Realisation], Array], unit: str, allowed: Callable[[Realisation], Array] | None = None
+) -> Quantiles:
+    """Quantiles of a quantity that cannot be negative, the input that matters most for it integrated.
+
+    allowed: positive where the quantity is finite; None where it always is.
+    """
+    smooth = values
+    if allowed is not None:
+
+        def values(real: Realisation) -> Array:
+            return np.asarray(np.where(allowed(real) > 0, smooth(real), np.inf))
+
     nominal = finite(_number(values(case.nominal.sampled)))
-    address = case.plan.widest(values)
+    address = case.plan.widest(smooth)
     if case.along is None or not address:
         return plain(case.full.sample, values(case.full.sampled), unit, nominal)
     start = rough(case.small.sample, values(case.small.sampled), unit, nominal)
-    return positive(case.along.up_to(address, values), start, unit, nominal)
+    return positive(case.along.up_to(address, smooth, allowed), start, unit, nominal)
 
 
 def _true(scene: Scene) -> Array:
@@ -311,11 +322,11 @@ def reach(case: Case) -> Quantiles:
     """The smallest true splitting that meets the goal within the budget, Hz."""
 
     def values(real: Realisation) -> Array:
-        needed = needed_at(real, case.rule, np.asarray(case.budget))
+        needed = raw_needed(real, case.rule, np.asarray(case.budget))
         with np.errstate(divide="ignore"):
             return np.asarray(needed / np.abs(real.factor))
 
-    return spread(case, values, "Hz")
+    return spread(case, values, "Hz", lambda real: real.averaging.margin(np.asarray(case.budget)))
 
 
 def limit(case: Case) -> Limit:
