@@ -57,7 +57,6 @@ def sheet(curves: Curves) -> Any:
 def _text(figure: Any, at: float, text: str, size: float, total: float, where: str, weight: str = "normal") -> None:
     figure.text(
         EDGE / WIDTH, at / total, text, fontsize=size, ha="left", va=where, color=DARK, fontweight=weight,
-        parse_math=False,
     )  # fmt: skip
 
 
