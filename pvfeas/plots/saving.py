@@ -40,5 +40,5 @@ def figure_bytes(figure: Any, target: str, metadata: Mapping[str, str]) -> bytes
         told = {"Title": metadata["Title"], "Description": metadata["Subject"], "Software": metadata["Creator"]}
     stream = io.BytesIO()
     with rc_context(SETTINGS):
-        figure.savefig(stream, format=suffix[1:], dpi=200, metadata=told)
+        figure.savefig(stream, format=suffix[1:], dpi=300, metadata=told)
     return stream.getvalue()

@@ -15,10 +15,12 @@ from pvfeas.questions.planning import Case, Plan, chosen, samplings
 from pvfeas.questions.sections import chance_points, finite, ratio, unit_need
 from pvfeas.required import required_wall_time
 from pvfeas.results import ChanceCurve, Curves, SigmaCurve
+from pvfeas.showing import value_text
 from pvfeas.summaries import flattened
 from pvfeas.tables import Goal
 
 STEPS_PER_DECADE = 24
+LEAST_STEPS = 80  # on the whole axis: a short one shows no corners
 LONGEST = 1e10  # s; no figure goes beyond three hundred years
 
 
@@ -43,9 +45,11 @@ def wall_times(cases: Sequence[Case]) -> Array:
     for case in cases:
         times = required_wall_time(case.small.sampled, case.rule, case.small.signal_drawn)
         marks += [t for t in pooled(*flattened(case.small.sample, times), [0.1, 0.5, 0.9]) if 0 < t < LONGEST]
-    low, high = min(marks) / 5.0, min(max(marks) * 5.0, LONGEST)
+    high = min(max(marks) * 5.0, LONGEST)
+    low = min(min(marks), high / 5.0) / 5.0
     first, last = np.floor(np.log10(low)), np.ceil(np.log10(high))
-    count = int(last - first) * STEPS_PER_DECADE + 1
+    steps = max(STEPS_PER_DECADE, int(np.ceil(LEAST_STEPS / np.log10(high / low))))
+    count = int(last - first) * steps + 1
     grid = np.logspace(first, last, count)
     return np.asarray(grid[(grid > low * 0.9) & (grid < high * 1.1)])
 
@@ -114,7 +118,7 @@ def goal_in_words(goal: Goal) -> str:
     if goal.kind == "measure":
         return f"measure the splitting to {100 * (goal.relative_uncertainty or 0.0):.3g} %"
     if goal.kind == "exclude":
-        what = "the predicted splitting" if goal.limit is None else f"a splitting of {goal.limit:.3g} Hz"
+        what = "the predicted splitting" if goal.limit is None else f"a splitting of {value_text(goal.limit, 'Hz')}"
         return f"exclude {what} at {100 * goal.confidence:.4g} % confidence{power}"
     what = "the sign of the splitting" if goal.kind == "sign" else "the splitting"
     return f"detect {what} at {goal.significance:.3g} sigma{power}"
