@@ -10,6 +10,7 @@ from typing import Any
 
 from pvfeas.goals import ONLY
 from pvfeas.keys import Key
+from pvfeas.line import shape_of
 from pvfeas.study import Scenario, Study, Table, Written
 from pvfeas.tables import Goal
 from pvfeas.vocabulary import keys_for
@@ -95,6 +96,8 @@ def _table(table: Table, part: str, address: str) -> str:
         elif name in table.options:
             value = table.options[name]
             content[name] = _listed(value)
+        elif part == "line" and name == "profile" and shape_of(set(table.quantities)):
+            continue  # the parts say the shape
         elif key.default is not None and key.sort != "quantity":
             content[name] = list(key.default) if isinstance(key.default, tuple) else key.default
     return toml(content)

@@ -27,8 +27,8 @@ def answers() -> dict[str, Assessment]:
     return {path.stem: assess(problem_of(load_study(path)), Options(tolerance=5.0)) for path in PATHS}
 
 
-def test_there_are_three() -> None:
-    assert NAMES == ["beam-line-scan", "three-compounds", "trapped-ions-ramsey"]
+def test_there_are_four() -> None:
+    assert NAMES == ["beam-line-scan", "fast-or-slow-switching", "three-compounds", "trapped-ions-ramsey"]
 
 
 @pytest.mark.parametrize("path", PATHS, ids=NAMES)

@@ -12,7 +12,7 @@ from pvfeas.errors import UsageError
 @click.argument("technique")
 @output_option
 def command(technique: str, output: str) -> int:
-    """Write a commented starter study for a TECHNIQUE: quoted, ramsey or scan."""
+    """Write a commented starter study for a TECHNIQUE: quoted, ramsey, scan, two-point or free-decay."""
     from pathlib import Path
 
     from pvfeas.starters import starter
