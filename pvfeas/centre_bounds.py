@@ -25,7 +25,7 @@ from pvfeas.laws import Array
 from pvfeas.profiles import Profile, profile_of
 
 FREE = ("amplitude", "width", "baseline", "slope", "asymmetry")
-ODD = ("slope", "asymmetry")  # the others do not couple to the centre of a centred scan
+ODD = ("slope", "asymmetry")  # the others do not couple to the centre of a centred scan of a line seen directly
 MOST_SUMMED = 64  # points summed at most; nodes of the integral over dense points
 DENSE = 0.2  # spacing in FWHM up to which the integral over all points is taken: 3e-4 of the sum for a Lorentzian
 WING = 16  # nodes on either side of the summed points of a coarse scan
@@ -148,7 +148,7 @@ def shot_weights(profile: Profile, x: Array, background: Array) -> Array:
 
 def kappa(
     profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array | None = None,
-    share: Array | None = None,
+    share: Array | None = None, detection: str = "direct",
 ) -> Array:  # fmt: skip
     """kappa of a scan, infinite where the points cannot tell the free parameters apart.
 
@@ -156,6 +156,7 @@ def kappa(
     thousands (where double precision ends: LEAST_LEFT).
 
     profile: lorentzian, gaussian or voigt; share: fL/(fL + fG) of a Voigt line, whose two widths are free together;
+    detection: direct, dispersion or first-derivative (lorentzian or gaussian); SNR is then half of peak-to-peak;
     free: nuisance parameters; span, offset: in FWHM; points: how
     many; background: counts per point over those of the line at its peak (shot noise), or None (white).
     All broadcast. Each element depends on its own numbers only.
@@ -167,9 +168,9 @@ def kappa(
     if 0 in shape:
         return np.empty(shape)
     if all(part.min() == part.max() for part in parts):
-        return np.full(shape, _kappa_at(profile, free, *(float(part.flat[0]) for part in parts)))
+        return np.full(shape, _kappa_at(profile, detection, free, *(float(part.flat[0]) for part in parts)))
     rows = [np.broadcast_to(part, shape).ravel() for part in parts]
-    return _kappa_of_rows(profile, free, *rows).reshape(shape)
+    return _kappa_of_rows(profile, detection, free, *rows).reshape(shape)
 
 
 def _grained(values: Array) -> Array:
@@ -179,25 +180,28 @@ def _grained(values: Array) -> Array:
 
 @lru_cache(maxsize=4096)
 def _kappa_at(
-    profile: str, free: tuple[str, ...], span: float, offset: float, points: float, background: float, share: float
-) -> float:
+    profile: str, detection: str, free: tuple[str, ...], span: float, offset: float, points: float, background: float,
+    share: float,
+) -> float:  # fmt: skip
     rows = (np.array([one]) for one in (span, offset, points, background, share))
-    return float(_kappa_of_rows(profile, free, *rows)[0])
+    return float(_kappa_of_rows(profile, detection, free, *rows)[0])
 
 
 def _kappa_of_rows(
-    profile: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array, share: Array
-) -> Array:
+    profile: str, detection: str, free: tuple[str, ...], span: Array, offset: Array, points: Array, background: Array,
+    share: Array,
+) -> Array:  # fmt: skip
     information = np.empty(span.shape)
     coarse = np.where((points > MOST_SUMMED) & (span > DENSE * points), NEAREST, INTEGRATED)
     kind = np.where((points == np.rint(points)) & (points <= MOST_SUMMED), SUMMED, coarse)
     label = np.where(kind == SUMMED, 3.0 + points, kind)
+    centred = (offset == 0) & (detection == "direct")
     for each in _different(label):
         for half in (False, True):
-            chosen = np.flatnonzero((label == each) & ((offset == 0) == half))
+            chosen = np.flatnonzero((label == each) & (centred == half))
             if chosen.size:
                 rows = (span[chosen], offset[chosen], points[chosen], background[chosen], share[chosen])
-                information[chosen] = _information(profile, free, int(kind[chosen[0]]), half, *rows)
+                information[chosen] = _information(profile, detection, free, int(kind[chosen[0]]), half, *rows)
     enough = (points > len(set(free)) + int(profile == "voigt" and "width" in free)) & (information > 0)
     with np.errstate(divide="ignore"):
         return np.asarray(np.where(enough, 1.0 / np.sqrt(information), np.inf))
@@ -216,7 +220,7 @@ def _nodes(kind: int, half: bool, span: Array, offset: Array, points: Array) -> 
 
 
 def _information(
-    name: str, free: tuple[str, ...], kind: int, half: bool, span: Array, offset: Array, points: Array,
+    name: str, detection: str, free: tuple[str, ...], kind: int, half: bool, span: Array, offset: Array, points: Array,
     background: Array, share: Array,
 ) -> Array:  # fmt: skip
     """Information on the centre of draws that share their kind of nodes; half: all of them centred."""
@@ -228,7 +232,7 @@ def _information(
     for start in range(0, span.size, ROWS):
         rows = slice(start, start + ROWS)
         x, weights = _nodes(kind, half, span[rows], offset[rows], points[rows])
-        profile = profile_of(name, share[rows, None])
+        profile = profile_of(name, share[rows, None], detection)
         if not white:
             weights = weights * shot_weights(profile, x, background[rows, None])
         found = information_matrix(columns(profile, x, coupled), None if flat else weights)

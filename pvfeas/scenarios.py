@@ -7,7 +7,7 @@ from typing import Any
 
 from pvfeas.inheritance import Leaf, Node, Tree, merge
 from pvfeas.keys import keys_of
-from pvfeas.line import COMPOSED, GIVEN, VOIGT
+from pvfeas.line import COMPOSED, GIVEN, VOIGT, shape_of
 from pvfeas.reading import Reader, _short
 from pvfeas.study import Scenario, Table, Written
 from pvfeas.suggestions import did_you_mean, suggest
@@ -306,6 +306,11 @@ def _rules(
         if part.needs_width and not isinstance(written, Leaf) and not named & set(WIDTHS) and not inherits:
             right = f'a {technique.kind} needs the width: write line = {{ fwhm = "12(2) kHz" }}'
             reader.faults.add(line.line, f"{name}.line.fwhm", "is missing", right)
+        shape = shape_of({*named, *line.quantities}) or line.options.get("profile", "lorentzian")
+        if shape == "voigt" and technique.options.get("detection", "direct") != "direct":
+            found = f"detection = {technique.options['detection']!r} of a Voigt line"
+            right = "only direct detection is known for it: give a Lorentzian or a Gaussian line, or direct"
+            reader.faults.add(technique.line, f"{name}.technique.detection", found, right)
         stated = technique.kind == "quoted" and technique.options.get("of", "splitting") == "splitting"
         if stated and technique_b is not None:
             reader.faults.add(

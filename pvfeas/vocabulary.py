@@ -24,7 +24,7 @@ LATER_KEYS: dict[str, tuple[str, ...]] = {
     "scan": ("modulation",),
 }  # fmt: skip
 LATER_KINDS = ("doublet", "parity-evolution")
-LATER_CHOICES = {"detection": ("dispersion", "first-derivative", "1f", "2f", "3f")}
+LATER_CHOICES = {"detection": ("1f", "2f", "3f")}
 
 
 def keys_for(table: str, kind: str = "") -> Mapping[str, Key]:

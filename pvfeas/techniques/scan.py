@@ -44,7 +44,9 @@ class Scan(Technique):
     summary: ClassVar[str] = "points across the line, the centre from a fit with nuisance parameters"
     needs_width: ClassVar[bool] = True
 
-    snr: Array | None = positive("1", "peak over rms noise of one point (white noise)", example="80 ×/ 1.3")
+    snr: Array | None = positive(
+        "1", "peak (half peak-to-peak of odd signals) over rms noise of one point (white noise)", example="80 ×/ 1.3"
+    )
     snr_time: Array | None = positive("s", "point time that snr belongs to; time/points if absent")
     points: Array = quantity("1", "points of one scan", lower=2.0, required=True, example="60")
     span: Array = positive("Hz", "range of the scan", required=True, along_line=True, example="5 FWHM")
@@ -56,12 +58,17 @@ class Scan(Technique):
     noise: str = choice("what limits one point", "white", "shot", default="white")
     counts: Array | None = positive("1", "counts of the line alone in one point at its peak (shot noise)")
     background: Array = quantity("1", "flat background per point as a fraction of counts", lower=0.0, default="0")
-    detection: str = choice("what is recorded", "direct", default="direct")
+    detection: str = choice(
+        "what is recorded; the width stays that of the parent line", "direct", "dispersion", "first-derivative",
+        default="direct",
+    )  # fmt: skip
 
     @classmethod
     def rules(cls, given: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
         """snr belongs to white noise, counts and background to shot noise."""
         if given.get("noise", "white") == "shot":
+            if given.get("detection", "direct") in ("dispersion", "first-derivative"):
+                yield "noise", "shot noise of what is not counted", 'write detection = "direct", or noise = "white"'
             if "counts" not in given:
                 yield "counts", "shot noise without counts", "give the counts of the line in one point at its peak"
             for key in ("snr", "snr_time"):
@@ -95,7 +102,7 @@ class Scan(Technique):
         behind = self.background if self.noise == "shot" else None
         factor = kappa(
             line.shape, self.free, np.asarray(self.span / fwhm), np.asarray(self.centre_offset / fwhm),
-            np.asarray(self.points), behind, line.lorentzian_share,
+            np.asarray(self.points), behind, line.lorentzian_share, self.detection,
         )  # fmt: skip
         excess = np.asarray(self.excess_noise) ** 2
         if self.noise == "shot":
@@ -109,7 +116,7 @@ class Scan(Technique):
         fwhm = np.atleast_1d(np.asarray(line.width))[..., None]
         along = np.asarray(self.span)[..., None] * BINS + np.asarray(self.centre_offset)[..., None]
         share = None if line.lorentzian_share is None else np.atleast_1d(line.lorentzian_share)[..., None]
-        shape = np.square(profile_of(line.shape, share).slope(along / fwhm))
+        shape = np.square(profile_of(line.shape, share, self.detection).slope(along / fwhm))
         return aliased_shape(shape, self.cycle_time(line), white, flicker, random_walk)
 
     def interrogation_width(self, line: Line) -> Array | None:
