@@ -8,9 +8,10 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
+from pvfeas.output.words import exact_time
 from pvfeas.plots.labels import spread
 from pvfeas.plots.style import COLOURS, DASHES, SMALL, colour, dashes, lines_of, name_lines, printable, text_width
-from pvfeas.plots.ticks import tidy_time, time_ticks, value_ticks
+from pvfeas.plots.ticks import time_ticks, value_ticks
 
 # Okabe & Ito 2008, Color Universal Design: black, orange, sky blue, bluish green, yellow, blue, vermillion,
 # reddish purple.
@@ -159,4 +160,4 @@ def test_value_ticks_are_two_or_more(low: float, decades: float) -> None:
     ],
 )
 def test_budgets_read_as_they_were_written(seconds: float, text: str) -> None:
-    assert tidy_time(seconds) == text
+    assert exact_time(seconds) == text

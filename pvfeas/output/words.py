@@ -111,7 +111,11 @@ def asked(value: float) -> str:
 
 
 def exact_time(seconds: float) -> str:
-    """A time that was written in the study: no digits that say nothing."""
+    """A time that was written in the study, in the largest unit of which it is a whole number."""
+    for unit, size in (("yr", 31557600.0), ("d", 86400.0), ("h", 3600.0), ("min", 60.0), ("s", 1.0)):
+        many = seconds / size
+        if 1.0 <= round(many) < 100_000 and abs(many - round(many)) < 1e-9 * many:
+            return f"{round(many)} {unit}"
     number, unit = time_text(seconds).split(" ", 1)
     return f"{number.rstrip('0').rstrip('.') if '.' in number else number} {unit}"
 

@@ -6,11 +6,10 @@ import math
 from collections.abc import Sequence
 from typing import Any
 
-from pvfeas.output.words import share
+from pvfeas.output.words import exact_time, share
 from pvfeas.plots.labels import WIDEST, Label, Panel, Tag, beneath, draw_dot
 from pvfeas.plots.sigma import MOST_LABELS
 from pvfeas.plots.style import DARK, GREY, colour, dashes, name_lines
-from pvfeas.plots.ticks import tidy_time
 from pvfeas.results import ChanceCurve
 
 LOW, HIGH = -0.03, 1.03  # ends of the axis: a curve at 0 or 1 is not on the frame
@@ -62,7 +61,7 @@ def _height(chance: float) -> float:
 
 def _budget(axes: Any, budget: float, wall: tuple[float, float], panel: Panel, single: ChanceCurve | None) -> None:
     """A line at the budget and its tag; a budget off the axis has a tag with an arrow at that end."""
-    text = f"budget {tidy_time(budget)}" + (f": {share(single.at_budget)}" if single else "")
+    text = f"budget {exact_time(budget)}" + (f": {share(single.at_budget)}" if single else "")
     if budget > wall[1]:
         panel.tags.append(Tag(1.0, f"{text} →", led=False))
     elif budget < wall[0]:

@@ -4,9 +4,8 @@ from __future__ import annotations
 
 from typing import Any
 
-from pvfeas.output.words import share
+from pvfeas.output.words import exact_time, share
 from pvfeas.plots.style import DARK, GREY, SMALL, colour, dashes, name_lines, text_width
-from pvfeas.plots.ticks import tidy_time
 from pvfeas.results import Curves
 from pvfeas.showing import time_text, value_text
 
@@ -22,7 +21,7 @@ def key_height(curves: Curves) -> float:
 
 
 def _columns(curves: Curves) -> list[list[str]]:
-    budget = tidy_time(curves.chance[0].budget)
+    budget = exact_time(curves.chance[0].budget)
     rows = [["scenario", "sigma needed", "goal met", "sample used up", f"chance within {budget}", "ceiling"]]
     for one, chance in zip(curves.sigma, curves.chance, strict=True):
         rows.append(

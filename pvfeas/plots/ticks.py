@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 from typing import Any
 
-from pvfeas.output.words import exact_time
 from pvfeas.plots.style import SMALL, text_width
 from pvfeas.showing import PREFIXES, prefixed, time_text
 
@@ -106,15 +105,6 @@ def _plain(value: float, unit: str) -> str:
     """1 ms, 20 µs: a round value with its prefix."""
     number, shown = prefixed(value, "" if unit == "1" else unit).split(" ", 1)
     return f"{number.rstrip('0').rstrip('.') if '.' in number else number} {shown}".strip()
-
-
-def tidy_time(seconds: float) -> str:
-    """A time that was written in the study, in the largest unit of which it is a whole number."""
-    for unit, size in (("yr", YEAR), ("d", DAY), ("h", HOUR), ("min", MINUTE), ("s", SECOND)):
-        many = seconds / size
-        if 1.0 <= round(many) < 100000 and abs(many - round(many)) < 1e-9 * many:
-            return f"{round(many)} {unit}"
-    return exact_time(seconds)
 
 
 def _fixed(axis: Any, named: list[tuple[float, str]], between: list[float]) -> None:

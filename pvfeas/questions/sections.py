@@ -29,7 +29,6 @@ from pvfeas.results import (
 from pvfeas.summaries import PROBABILITIES, flattened, guesses, plain, positive, rough, scaled, signed
 from pvfeas.systematics import surviving_significance
 
-
 NOTHING = 1e-30  # Hz: a sigma that small stands for none
 
 
