@@ -37,13 +37,15 @@ def level_of_deviation(kind: str, deviation: Array, tau: Array) -> Array:
 def levels_of_table(tau: Array, deviation: Array) -> tuple[float, float, float]:
     """h0, h-1, h-2 that fit Allan deviations, by non-negative least squares of the relative Allan variance.
 
-    tau in s and deviation in Hz: one-dimensional and of equal length. Raises ValueError otherwise.
+    tau in s and deviation in Hz: one-dimensional, of equal length and positive. Raises ValueError otherwise.
     """
     from scipy.optimize import nnls
 
     times, variance = np.asarray(tau, dtype=float), np.square(np.asarray(deviation, dtype=float))
     if times.ndim != 1 or times.shape != variance.shape or times.size == 0:
         raise ValueError("a table of Allan deviations has one deviation for each tau")
+    if not (np.all(times > 0) and np.all(variance > 0)):
+        raise ValueError("the times and deviations of a table are positive")
     columns = np.stack([0.5 / times, np.full_like(times, FLICKER), RANDOM_WALK * times], axis=1)
     size = columns.max(axis=0)
     found, _ = nnls(columns / size / variance[:, None], np.ones_like(times))
