@@ -139,6 +139,11 @@ def _recorded(name: str, value: Wave, slope: Wave, partner: Wave) -> Profile:
     return Profile(name, value, slope, lambda x, _: slope(x), partner)
 
 
+# A line with less of a Gaussian part is taken with so much: its shape changes by 1e-6, while the derivatives of w
+# would lose digits as the square of the ratio of the parts.
+LEAST_GAUSSIAN = 1e-3
+
+
 class Voigt(Profile):
     """The Voigt profile of unit peak against x in its own full widths, for shares fL/(fL + fG) of shape (rows, 1).
 
@@ -148,7 +153,8 @@ class Voigt(Profile):
 
     def __init__(self, share: Array) -> None:
         super().__init__("voigt", self._value, self._slope, self._slope_from, self._partner)
-        gaussian_part = np.maximum(1.0 - share, 1e-9)
+        share = np.minimum(share, 1.0 - LEAST_GAUSSIAN)
+        gaussian_part = 1.0 - share
         object.__setattr__(self, "_stretch", 2.0 * ROOT_LN2 * voigt_width(share, gaussian_part) / gaussian_part)
         object.__setattr__(self, "_y", ROOT_LN2 * share / gaussian_part)
         object.__setattr__(self, "_peak", special.erfcx(self._y))

@@ -176,6 +176,16 @@ def test_a_voigt_line_goes_over_into_its_limits() -> None:
         assert found == pytest.approx(float(kappa(name, free, 5.0 * one, 0.2 * one, 60.0 * one)), rel=1e-4)
 
 
+@pytest.mark.parametrize("ratio", [1e3, 1e5, 1e7, 1e9])
+def test_next_to_no_gaussian_part(ratio: float) -> None:
+    """A narrow laser beside a wide line: that of the Lorentzian line; 1e-4, as its Gaussian part has no size that matters."""
+    one, share = np.ones(()), np.asarray(ratio / (1.0 + ratio))
+    args = (5.0 * one, 0.2 * one, 60.0 * one)
+    assert float(kappa("voigt", (), *args, None, share)) == pytest.approx(
+        float(kappa("lorentzian", (), *args)), rel=1e-4
+    )
+
+
 def test_voigt_profile_against_scipy() -> None:
     """scipy.special.voigt_profile (unit area) scaled to its peak; slope and partner by differences and Hilbert's pair."""
     x, share = np.linspace(-3.0, 3.0, 31)[None], np.array([[0.4]])

@@ -219,7 +219,7 @@ def test_cost_of_a_draw_does_not_depend_on_the_points() -> None:
 def test_line_distances_may_be_written_in_widths_and_shapes_are_refused_by_choices() -> None:
     keys = keys_of(Scan)
     assert [name for name, key in keys.items() if key.along_line] == ["span", "centre_offset"]
-    assert keys["detection"].choices == ("direct",)
+    assert keys["detection"].choices == ("direct", "dispersion", "first-derivative")
     assert keys["free"].default == ("amplitude", "width", "baseline")
     assert keys_of(Ramsey)["readout"].choices == ("both states", "one state")
     assert LINE.fwhm == FWHM

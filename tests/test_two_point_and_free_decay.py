@@ -11,9 +11,8 @@ import pytest
 from scipy import integrate
 
 from pvfeas.profiles import PROFILES, Voigt
-from pvfeas.switching_noise import aliased_shape
 from pvfeas.tables import Line
-from pvfeas.techniques.free_decay import BINS, FreeDecay, decay_penalty, record_sensitivity, tone_variance
+from pvfeas.techniques.free_decay import FreeDecay, decay_penalty, record_sensitivity, tone_variance
 from pvfeas.techniques.two_point import (
     TwoPoint,
     best_depth,
@@ -209,12 +208,19 @@ def test_sensitivity_along_the_record() -> None:
     assert (shape * bump).sum() / shape.sum() == pytest.approx(fitted, rel=2e-3)  # the grid
 
 
-def test_idle_time_lets_noise_in() -> None:
+@pytest.mark.parametrize(("record", "idle"), [(0.08, 0.02), (2e-4, 0.1), (0.05, 0.0)])
+def test_idle_time_lets_noise_in(record: float, idle: float) -> None:
+    """White noise: (<s^2>/<s>^2 - 1)/2 over the cycle by quadrature; 2e-3: 64 bins a record."""
     technique = FreeDecay(
-        decay_time=n(0.05), record=n(0.08), snr=n(5), sample_interval=n(1e-5), idle_time=n(0.02), excess_noise=n(1)
+        decay_time=n(0.05), record=n(record), snr=n(5), sample_interval=n(1e-5), idle_time=n(idle), excess_noise=n(1)
     )
-    shape = record_sensitivity(BINS * 0.1, n(0.08), n(0.05))
-    found = technique.aliased_noise(line(), n(1), n(0), n(0))
-    assert float(found) == pytest.approx(float(aliased_shape(shape, n(0.1), n(1), n(0), n(0))))
-    assert float(found) > 0.125  # more than an even sensitivity over 80 % of the cycle lets in
+
+    def moment(power: int) -> float:
+        def part(at: float) -> float:
+            return float(record_sensitivity(n(at), n(record), n(0.05))) ** power
+
+        return float(integrate.quad(part, 0.0, record, epsrel=1e-10)[0]) / (record + idle)
+
+    found = float(technique.aliased_noise(line(), n(1), n(0), n(0)))
+    assert found == pytest.approx((moment(2) / moment(1) ** 2 - 1.0) / 2.0, rel=2e-3)
     assert technique.interrogation_width(line()) == pytest.approx(1.0 / (np.pi * 0.05))

@@ -11,12 +11,12 @@ from scipy import special
 from pvfeas.keys import flag, positive, quantity
 from pvfeas.laws import Array
 from pvfeas.line import Line
-from pvfeas.switching_noise import aliased_shape
+from pvfeas.switching_noise import aliased_part
 from pvfeas.techniques.base import Technique
 
 SMALL = 0.5  # record over half the decay time below which a series replaces differences of exponentials
 COEFFICIENTS = [2.0 / float(special.factorial(2 * k)) for k in range(2, 12)]
-BINS = (np.arange(64) + 0.5) / 64  # of a cycle
+BINS = (np.arange(64) + 0.5) / 64  # of a record
 
 
 def decay_penalty(record: Array, decay_time: Array) -> Array:
@@ -89,10 +89,9 @@ class FreeDecay(Technique):
 
     def aliased_noise(self, line: Line, white: Array, flicker: Array, random_walk: Array) -> Array:
         """Sensitivity along the record, none in the idle time."""
-        cycle = self.cycle_time(line)
-        time = BINS * np.asarray(cycle)[..., None]
-        shape = record_sensitivity(time, np.asarray(self.record)[..., None], np.asarray(self.decay_time)[..., None])
-        return aliased_shape(shape, cycle, white, flicker, random_walk)
+        cycle, record = self.cycle_time(line), np.asarray(self.record)[..., None]
+        shape = record_sensitivity(BINS * record, record, np.asarray(self.decay_time)[..., None])
+        return aliased_part(shape, self.record / cycle, cycle, white, flicker, random_walk)
 
     def warnings(self, line: Line) -> tuple[tuple[str, str], ...]:
         """Fewer samples than the bound needs."""
