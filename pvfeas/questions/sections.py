@@ -29,9 +29,6 @@ from pvfeas.results import (
 from pvfeas.summaries import PROBABILITIES, flattened, guesses, plain, positive, rough, scaled, signed
 from pvfeas.systematics import surviving_significance
 
-NOTHING = 1e-30  # Hz: a sigma that small stands for none
-
-
 def _number(values: Array) -> float:
     return float(np.asarray(values).reshape(-1)[0])
 
@@ -237,7 +234,7 @@ def ratio(case: Case, divisor: Callable[[Realisation], Array], probabilities: li
     along = divisor(estimator.realisation)
     starts = [value if np.isfinite(value) and value > 0 else 1.0 for value in first]
     found = solve(lambda value: 1.0 - estimator.ratio_above(along, value), probabilities, starts)
-    return [one.value if one.value is not None and one.value > NOTHING else None for one in found]
+    return [quantile.value for quantile in found]
 
 
 def sigma_at(real: Realisation, wall: float) -> Array:
