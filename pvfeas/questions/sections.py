@@ -29,6 +29,7 @@ from pvfeas.results import (
 from pvfeas.summaries import PROBABILITIES, flattened, guesses, plain, positive, rough, scaled, signed
 from pvfeas.systematics import surviving_significance
 
+
 def _number(values: Array) -> float:
     return float(np.asarray(values).reshape(-1)[0])
 
